@@ -1,0 +1,1 @@
+"""Thermal models: transfer functions, what drives them, and how they answer. No data, no fitter."""
