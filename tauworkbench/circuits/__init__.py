@@ -1,1 +1,1 @@
-""""""
+"""How the sensor's ohms became the signal, and back."""

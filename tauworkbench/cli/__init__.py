@@ -1,1 +1,1 @@
-""""""
+"""The command line: arguments to choices, choices to a summary."""

@@ -1,1 +1,1 @@
-""""""
+"""From a step in a trace to time constants with intervals."""

@@ -1,1 +1,1 @@
-""""""
+"""Least squares, projection and profiles: the only lmfit, and no physics."""

@@ -1,1 +1,1 @@
-""""""
+"""Resistance and temperature, both ways, with the slope."""

@@ -1,1 +1,1 @@
-""""""
+"""Tables, figures and documents from a result."""

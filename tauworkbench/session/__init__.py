@@ -1,1 +1,1 @@
-""""""
+"""Choices, the table of stages, files: one run end to end."""
