@@ -1,0 +1,147 @@
+r"""How a transfer function answers an ideal step, a ramp and their kin, with derivatives.
+
+With :math:`H` of `TransferFunction`, write :math:`r_k` for the time function of
+:math:`H(s)/s^k`: :math:`r_0` is the impulse response, :math:`r_1` the unit step response,
+:math:`r_2` the response to a ramp of 1 K/s. All are convolutions of exponentials (see
+`exponentials`), so equal time constants are no special case.
+
+A pair of poles is described by its *shape* (log of the sum of the time constants, ``equality``
+= 4 tau1 tau2 / (tau1 + tau2)^2), in which the response is smooth from a vanishing second pole
+(equality 0) to equal ones (equality 1); a single pole by the log of its time constant.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+import numpy as np
+from scipy.optimize import brentq
+
+from ..errors import InputError
+from ..records import FloatArray
+from .exponentials import convolved
+from .transfer import TransferFunction
+
+__all__ = [
+    "integral",
+    "ramp_response",
+    "response_time",
+    "shape_integral",
+    "shape_of",
+    "shape_slopes",
+    "step_response",
+    "time_constants",
+]
+
+Shape = Sequence[float]
+# An equality below this is one pole to double precision; the floor keeps rates finite.
+_SMALLEST_EQUALITY = 1e-9
+
+
+def time_constants(shape: Shape) -> tuple[float, ...]:
+    """Time constants from the slowest [s] of a shape: (log tau,) or (log sum, equality)."""
+    total = math.exp(shape[0])
+    if len(shape) == 1:
+        return (total,)
+    equality = min(max(shape[1], _SMALLEST_EQUALITY), 1.0)
+    slow = total / 2 * (1 + math.sqrt(1 - equality))
+    return slow, total * total * equality / 4 / slow
+
+
+def shape_of(time_constants_s: Sequence[float]) -> tuple[float, ...]:
+    """Return the shape of one or two time constants [s]; inverse of `time_constants`."""
+    if len(time_constants_s) == 1:
+        return (math.log(time_constants_s[0]),)
+    slow, fast = time_constants_s
+    return math.log(slow + fast), 4 * slow * fast / (slow + fast) ** 2
+
+
+def integral(k: int, rates: Sequence[float], time_s: FloatArray) -> FloatArray:
+    """Time function of prod(rate_i / (s + rate_i)) / s^k, for k >= -2."""
+    return math.prod(rates) * _over(k, tuple(rates), time_s)
+
+
+def _over(k: int, rates: tuple[float, ...], time_s: FloatArray) -> FloatArray:
+    """Time function of prod(1 / (s + rate_i)) / s^k, without what it has at time 0 itself."""
+    if k >= 0:
+        return convolved((*rates, *(0.0,) * k), time_s)
+    # s / (s + rate) = 1 - rate / (s + rate), taken on the fastest rate
+    *rest, fast = sorted(rates)
+    value = -fast * _over(k + 1, rates, time_s)
+    return value + _over(k + 1, tuple(rest), time_s) if rest else value
+
+
+def shape_integral(k: int, shape: Shape, time_s: FloatArray, fixed: Shape = ()) -> FloatArray:
+    """`integral` for a shape, with further fixed rates (a reader's filter) in the chain."""
+    return integral(k, (*(1 / t for t in time_constants(shape)), *fixed), time_s)
+
+
+def shape_slopes(
+    k: int, shape: Shape, time_s: FloatArray, fixed: Shape = ()
+) -> tuple[FloatArray, ...]:
+    """Derivatives of `shape_integral` with respect to each number of the shape.
+
+    From 1/H = 1 + S s + P s^2: dH/dS = -s H^2 and dH/dP = -s^2 H^2, which hold at equal poles.
+    """
+    rates = tuple(1 / t for t in time_constants(shape))
+    scale = math.prod(rates) ** 2 * math.prod(fixed)
+    twice = (*rates, *rates, *fixed)
+    by_sum = -scale * _over(k - 1, twice, time_s)
+    total = math.exp(shape[0])
+    if len(shape) == 1:
+        return (total * by_sum,)
+    by_product = -scale * _over(k - 2, twice, time_s)
+    product = 1 / math.prod(rates)
+    return total * by_sum + 2 * product * by_product, total * total / 4 * by_product
+
+
+def step_response(transfer: TransferFunction, time_s: FloatArray) -> FloatArray:
+    """Response to a unit step of the medium at time 0, dimensionless."""
+    return _answer(1, transfer, time_s)
+
+
+def ramp_response(transfer: TransferFunction, time_s: FloatArray) -> FloatArray:
+    """Response [K] to a medium rising from time 0 at 1 K/s; it ends ``lag_s`` behind."""
+    return _answer(2, transfer, time_s)
+
+
+def _answer(k: int, transfer: TransferFunction, time_s: FloatArray) -> FloatArray:
+    rates = [1 / t for t in transfer.time_constants_s]
+    time = np.asarray(time_s, float) - transfer.dead_time_s
+    value = integral(k, rates, time)
+    if transfer.zero_s:
+        value = value + transfer.zero_s * integral(k - 1, rates, time)
+    return value
+
+
+def response_time(transfer: TransferFunction, fraction: float) -> float:
+    """Time [s] at which the answer to an ideal step first reaches ``fraction`` of it.
+
+    Parameters
+    ----------
+    transfer : TransferFunction
+        Its dead time counts.
+    fraction : float
+        Between 0 and 1, both excluded: 0.632 is 1 - exp(-1) rounded, so ask for that exactly
+        where a single pole's time constant is meant.
+    """
+    if not 0 < fraction < 1:
+        raise InputError("fraction", f"{fraction} is outside 0 to 1", "give for example 0.9")
+    taus = transfer.time_constants_s
+    quick = TransferFunction(taus, transfer.zero_s)
+    if step_response(quick, np.array([1e-12 * taus[0]]))[0] >= fraction:
+        return transfer.dead_time_s  # a direct path takes it there at once
+    total = sum(taus)
+    marks = total * np.concatenate([np.geomspace(1e-6, 0.05, 30), np.linspace(0.06, 40, 800)])
+    reached = step_response(quick, marks) >= fraction
+    while not reached.any():
+        marks *= 10
+        reached = step_response(quick, marks) >= fraction
+    first = int(np.argmax(reached))
+    low = float(marks[first - 1]) if first else 0.0
+
+    def short(t: float) -> float:
+        return float(step_response(quick, np.array([t]))[0]) - fraction
+
+    return transfer.dead_time_s + float(brentq(short, low, float(marks[first]), xtol=1e-14 * total))
