@@ -38,10 +38,11 @@ class Quantity:
     @classmethod
     def wald(cls, value: float, standard_uncertainty: float, quantile: float) -> Quantity:
         """Build a symmetric interval: value plus or minus quantile standard uncertainties."""
-        half = quantile * standard_uncertainty
+        value, u = float(value), float(standard_uncertainty)
+        half = float(quantile) * u
         if not math.isfinite(half):
             return cls(value)
-        return cls(value, standard_uncertainty, value - half, value + half)
+        return cls(value, u, value - half, value + half)
 
     def mapped(self, function: Callable[[float], float], slope: float) -> Quantity:
         """Pass value and bounds through a monotonic function whose slope at value is given."""

@@ -18,6 +18,7 @@ from ..records import FloatArray
 __all__ = ["Separable", "Solution", "project", "solve", "solve_separable"]
 
 Model = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
+Bounds = tuple[Sequence[float] | FloatArray, Sequence[float] | FloatArray]
 
 
 @dataclass(frozen=True, eq=False)
@@ -76,7 +77,7 @@ def solve(
     model: Model,
     start: Sequence[float] | FloatArray,
     *,
-    bounds: tuple[Sequence[float], Sequence[float]] | None = None,
+    bounds: Bounds | None = None,
     tolerance: float = 1e-10,
     max_steps: int = 200,
     watch: Watch = SILENT,
@@ -95,8 +96,10 @@ def solve(
     tolerance : float
         Relative fall of the cost, and step against the parameter's own scale, at which to stop.
     """
-    low, high = (np.asarray(b, float) for b in bounds) if bounds else (-np.inf, np.inf)
-    values = np.clip(np.asarray(start, float), low, high)
+    first = np.asarray(start, float)
+    limits = bounds or (np.full(first.size, -np.inf), np.full(first.size, np.inf))
+    low, high = (np.asarray(b, float) for b in limits)
+    values = np.clip(first, low, high)
     residual, jacobian = model(values)
     cost, damping, converged, count = float(residual @ residual), 1e-3, False, 0
     for count in range(1, max_steps + 1):
@@ -122,7 +125,9 @@ def solve(
     return Solution(values, residual, jacobian, cost, converged, count)
 
 
-def _free(values: FloatArray, gradient: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+def _free(
+    values: FloatArray, gradient: FloatArray, low: FloatArray, high: FloatArray
+) -> FloatArray:
     """1 for parameters that may move, 0 for those held at a bound by the slope."""
     held = ((values <= low) & (gradient > 0)) | ((values >= high) & (gradient < 0))
     return (~held).astype(float)
@@ -168,12 +173,12 @@ def project(columns: FloatArray, target: FloatArray) -> tuple[FloatArray, FloatA
     return np.linalg.solve(r, weights) / scale, q @ weights - target, q
 
 
-def solve_separable(
+def solve_separable(  # noqa: PLR0913 - the model, what it fits, and how to search
     model: Separable,
     target: FloatArray,
     start: Sequence[float] | FloatArray,
     *,
-    bounds: tuple[Sequence[float], Sequence[float]] | None = None,
+    bounds: Bounds | None = None,
     tolerance: float = 1e-10,
     max_steps: int = 200,
     watch: Watch = SILENT,

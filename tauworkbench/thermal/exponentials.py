@@ -80,4 +80,5 @@ def _series(rates: tuple[float, ...], time: FloatArray) -> FloatArray:
         for m in range(1, _TERMS):
             sums[m] += (rate - rates[0]) * sums[m - 1]
     factors = [(-1.0) ** m * sums[m] / factorial(order + m) for m in range(_TERMS)]
-    return np.exp(-rates[0] * time) * time**order * np.polynomial.polynomial.polyval(time, factors)
+    taylor = np.polynomial.polynomial.polyval(time, factors)
+    return np.asarray(np.exp(-rates[0] * time) * time**order * taylor)

@@ -16,7 +16,6 @@ import math
 from collections.abc import Sequence
 
 import numpy as np
-from scipy.optimize import brentq
 
 from ..errors import InputError
 from ..records import FloatArray
@@ -27,6 +26,7 @@ __all__ = [
     "integral",
     "ramp_response",
     "response_time",
+    "response_times",
     "shape_integral",
     "shape_of",
     "shape_slopes",
@@ -34,7 +34,9 @@ __all__ = [
     "time_constants",
 ]
 
-Shape = Sequence[float]
+Shape = Sequence[float] | FloatArray
+# Where to look for the first crossing, in units of the sum of the time constants.
+_MARKS = np.concatenate([np.geomspace(1e-9, 0.02, 24), np.geomspace(0.025, 40, 120)])
 # An equality below this is one pole to double precision; the floor keeps rates finite.
 _SMALLEST_EQUALITY = 1e-9
 
@@ -80,12 +82,12 @@ def shape_integral(k: int, shape: Shape, time_s: FloatArray, fixed: Shape = ()) 
 def shape_slopes(
     k: int, shape: Shape, time_s: FloatArray, fixed: Shape = ()
 ) -> tuple[FloatArray, ...]:
-    """Derivatives of `shape_integral` with respect to each number of the shape.
+    """Differentiate `shape_integral` with respect to each number of the shape.
 
     From 1/H = 1 + S s + P s^2: dH/dS = -s H^2 and dH/dP = -s^2 H^2, which hold at equal poles.
     """
     rates = tuple(1 / t for t in time_constants(shape))
-    scale = math.prod(rates) ** 2 * math.prod(fixed)
+    scale = math.prod(rates) ** 2 * math.prod(float(f) for f in fixed)
     twice = (*rates, *rates, *fixed)
     by_sum = -scale * _over(k - 1, twice, time_s)
     total = math.exp(shape[0])
@@ -116,32 +118,50 @@ def _answer(k: int, transfer: TransferFunction, time_s: FloatArray) -> FloatArra
 
 
 def response_time(transfer: TransferFunction, fraction: float) -> float:
-    """Time [s] at which the answer to an ideal step first reaches ``fraction`` of it.
+    """Time [s] at which the answer to an ideal step first reaches ``fraction`` of it."""
+    return transfer.dead_time_s + float(response_times(transfer, [fraction])[0])
+
+
+def response_times(transfer: TransferFunction, fractions: Sequence[float]) -> FloatArray:
+    """Find the times [s] after the dead time at which a step's answer first reaches fractions.
 
     Parameters
     ----------
     transfer : TransferFunction
-        Its dead time counts.
-    fraction : float
+        Its dead time is left out.
+    fractions : sequence of float
         Between 0 and 1, both excluded: 0.632 is 1 - exp(-1) rounded, so ask for that exactly
         where a single pole's time constant is meant.
+
+    Notes
+    -----
+    A zero slower than the slowest pole makes the answer overshoot; the first crossing is meant.
+    A direct path that reaches a fraction at once gives 0.
     """
-    if not 0 < fraction < 1:
-        raise InputError("fraction", f"{fraction} is outside 0 to 1", "give for example 0.9")
+    wanted = np.asarray(fractions, float)
+    if not np.all((wanted > 0) & (wanted < 1)):
+        raise InputError("fraction", f"{fractions} is outside 0 to 1", "give for example 0.9")
     taus = transfer.time_constants_s
     quick = TransferFunction(taus, transfer.zero_s)
-    if step_response(quick, np.array([1e-12 * taus[0]]))[0] >= fraction:
-        return transfer.dead_time_s  # a direct path takes it there at once
-    total = sum(taus)
-    marks = total * np.concatenate([np.geomspace(1e-6, 0.05, 30), np.linspace(0.06, 40, 800)])
-    reached = step_response(quick, marks) >= fraction
-    while not reached.any():
-        marks *= 10
-        reached = step_response(quick, marks) >= fraction
-    first = int(np.argmax(reached))
-    low = float(marks[first - 1]) if first else 0.0
-
-    def short(t: float) -> float:
-        return float(step_response(quick, np.array([t]))[0]) - fraction
-
-    return transfer.dead_time_s + float(brentq(short, low, float(marks[first]), xtol=1e-14 * total))
+    marks = sum(taus) * _MARKS
+    reached = step_response(quick, marks) >= wanted[:, None]
+    while not reached[:, -1].all():
+        marks = marks * 4
+        reached = step_response(quick, marks) >= wanted[:, None]
+    first = np.argmax(reached, axis=1)
+    low, high = marks[np.maximum(first - 1, 0)], marks[first]
+    at_once = first == 0
+    time = (low + high) / 2
+    for _ in range(60):  # Newton, kept inside a bracket that only shrinks
+        short = step_response(quick, time) - wanted
+        low, high = np.where(short < 0, time, low), np.where(short < 0, high, time)
+        speed = _answer(0, quick, time)
+        with np.errstate(divide="ignore", invalid="ignore"):
+            newton = time - short / speed
+        inside = (newton > low) & (newton < high)
+        nearer = np.where(inside, newton, (low + high) / 2)
+        done = np.all(np.abs(nearer - time) <= 1e-14 * nearer)
+        time = nearer
+        if done:
+            break
+    return np.where(at_once, 0.0, time)

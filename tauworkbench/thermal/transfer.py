@@ -1,8 +1,8 @@
-"""The transfer function between the medium and the sensor's internal temperature.
+r"""The transfer function between the medium and the sensor's internal temperature.
 
-.. math:: H(s) = (1 + z s)\\, e^{-\\theta s} / \\prod_i (1 + \\tau_i s)
+.. math:: H(s) = (1 + z s)\, e^{-\theta s} / \prod_i (1 + \tau_i s)
 
-with time constants :math:`\\tau_i` > 0 (the poles are minus their inverses), a zero's time
+with time constants :math:`\tau_i` > 0 (the poles are minus their inverses), a zero's time
 :math:`z` >= 0 (a direct path beside the slow one) and a dead time :math:`\\theta` >= 0, all in
 seconds; unit gain. One pole, two poles, a zero and a dead time are this one record with other
 numbers.

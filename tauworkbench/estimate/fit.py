@@ -1,0 +1,207 @@
+"""A trace's steps to estimates: bracket, candidates, choice, intervals, lmfit's last word."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import fields
+from typing import Any
+
+import numpy as np
+
+from ..errors import EstimateError, InputError
+from ..progress import SILENT, Watch
+from ..records import FitSummary, FloatArray, Step, StepSummary, Trace
+from ..steps.find import find_steps
+from ..thermal.drive import Drive
+from ..uncertainty import Quantity
+from .candidates import Fitted, fit_candidates
+from .choice import Choice, choose
+from .derived import RESPONSES
+from .final import final_least_squares
+from .record import Estimate
+from .reservations import reservations
+from .settings import FitSettings
+from .starts import Record, cut
+
+__all__ = ["FitSettings", "fit_step", "fit_steps"]
+
+_PARAMETERS = (
+    "time_constant_1_s",
+    "time_constant_2_s",
+    "zero_s",
+    "dead_time_s",
+    "drift_k_per_s",
+)
+_DYNAMIC = _PARAMETERS[:4]
+
+
+def fit_step(trace: Trace, *, watch: Watch = SILENT, **settings: Any) -> Estimate:
+    """Fit the thermal model to one step of a trace.
+
+    Parameters
+    ----------
+    trace : Trace
+    watch : Watch
+        Progress and cancelling.
+    **settings
+        The fields of `FitSettings`, named as in ``[model]`` and ``[test]``: ``order``, ``zero``,
+        ``dead_time``, ``drift``, ``input``, ``noise``, ``coverage``, ``onset_s``, ``window_s``,
+        ``steps``, ``transfer_s``, ...
+
+    Returns
+    -------
+    Estimate
+
+    Raises
+    ------
+    EstimateError
+        Too few samples, no step, or a slowest time constant without an upper limit.
+    InputError
+        A setting that isn't one, or that contradicts another.
+    """
+    known = {f.name for f in fields(FitSettings)}
+    for name in settings:
+        if name not in known:
+            raise InputError(name, "is not a setting of a fit", f"use one of {sorted(known)}")
+    chosen = FitSettings(**settings)
+    if chosen.steps == "all":
+        raise InputError(
+            "steps", '"all" gives several estimates', "call fit_steps, or give a number"
+        )
+    return fit_steps(trace, chosen, watch)[0]
+
+
+def fit_steps(
+    trace: Trace,
+    settings: FitSettings,
+    watch: Watch = SILENT,
+    steps: tuple[Step, ...] | None = None,
+) -> tuple[Estimate, ...]:
+    """Fit the steps that ``settings.steps`` names; ``steps`` are the bracketed ones if known."""
+    if steps is None:
+        steps = find_steps(trace, onset=settings.onset_s, window_s=settings.window_s)
+    return tuple(_fit_one(trace, s, settings, watch) for s in select(steps, settings.steps))
+
+
+def select(steps: tuple[Step, ...], wanted: str | int) -> tuple[Step, ...]:
+    """Return the steps that ``[test] steps`` names."""
+    if wanted == "all":
+        return steps
+    if wanted == "largest":
+        return (max(steps, key=lambda s: abs(s.final_c - s.start_c)),)
+    if int(wanted) > len(steps):
+        raise EstimateError(
+            "steps",
+            f"step {wanted} of a log in which {len(steps)} were found",
+            f"give a number from 1 to {len(steps)}",
+            {"steps": float(len(steps))},
+        )
+    return (steps[int(wanted) - 1],)
+
+
+def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> Estimate:
+    record = cut(trace, step)
+    fits = fit_candidates(record, step, settings, _drive(trace, settings), watch)
+    choice = choose(record, fits, settings)
+    fitted, found = choice.fitted, choice.quantities
+    cautions = reservations(record, fitted, found, choice.noise, settings, trace.reader)
+    names, covariance = _covariance(choice)
+    predict, fitted_c, band = _curves(trace, record, choice)
+    lmfit_result = final_least_squares(fitted)
+    return Estimate(
+        step=_step_summary(step, settings, choice),
+        fit=_fit_summary(settings, choice),
+        transfer=fitted.transfer,
+        fitted_c=fitted_c,
+        residual_k=trace.temperature_c - fitted_c,
+        in_fit=record.mask,
+        band_k=band,
+        covariance=covariance,
+        covariance_names=names,
+        cautions=tuple(dict.fromkeys((*trace.cautions, *cautions))),
+        coverage=settings.coverage,
+        predictor=predict,
+        lmfit_result=lmfit_result,
+    )
+
+
+def _drive(trace: Trace, settings: FitSettings) -> Drive:
+    """Return the running means and filters beside the sensor."""
+    reader = trace.reader
+    means = tuple(x for x in (settings.transfer_s, reader.averaging_s) if x > 0)
+    return Drive(means, (1 / reader.filter_s,) if reader.filter_s > 0 else ())
+
+
+def _step_summary(step: Step, settings: FitSettings, choice: Choice) -> StepSummary:
+    onset, found = choice.fitted.form.onset, choice.quantities
+    when: Quantity | None = found.get("onset_s")
+    if onset == "given":
+        at, u = step.bracket_s[0], settings.onset_u_s
+        when = Quantity.wald(at, u, choice.scale.quantile)
+    start = None if onset == "before" else found["start_c"]
+    return StepSummary(onset, found["final_c"], step.window_s, when, start, step.number)
+
+
+def _fit_summary(settings: FitSettings, choice: Choice) -> FitSummary:
+    found = choice.quantities
+    parameters = {n: found[n] for n in _PARAMETERS if n in found}
+    if settings.transfer_s:
+        parameters["transfer_s"] = Quantity.wald(settings.transfer_s, 0.0, 1.0)
+    return FitSummary(
+        model=choice.fitted.form.name,
+        time_constants_s=tuple(
+            found[n] for n in ("time_constant_1_s", "time_constant_2_s") if n in found
+        ),
+        parameters=parameters,
+        response_time_s={n: found[f"response_{n}"] for n in RESPONSES},
+        lag_s=found["lag_s"],
+        noise=choice.noise,
+        candidates=choice.candidates,
+        converged=choice.fitted.solution.converged,
+    )
+
+
+def _covariance(choice: Choice) -> tuple[tuple[str, ...], FloatArray]:
+    """Covariance of the dynamic parameters from noise alone, for whoever recovers an ambient."""
+    from .derived import derive
+
+    fitted = choice.fitted
+    derived = derive(fitted.model, fitted.values, fitted.offset_c)
+    names = tuple(n for n in _DYNAMIC if n in derived)
+    slopes = np.array([derived[n][1] for n in names])
+    whole = fitted.solution.unscaled_covariance() * choice.scale.variance
+    with np.errstate(invalid="ignore"):
+        return names, np.asarray(slopes @ whole @ slopes.T)
+
+
+def _curves(
+    trace: Trace, record: Record, choice: Choice
+) -> tuple[Callable[[FloatArray], FloatArray], FloatArray, FloatArray]:
+    """Return the predictor, the fitted curve on the trace, and its standard uncertainty."""
+    fitted = choice.fitted
+
+    def predict(time_s: FloatArray) -> FloatArray:
+        flat = np.atleast_1d(np.asarray(time_s, float))
+        curve = fitted.offset_c + fitted.model.curve(fitted.values, flat.ravel())
+        return np.asarray(curve.reshape(np.shape(time_s)))
+
+    fitted_c = np.full(trace.time_s.size, np.nan)
+    band = np.full(trace.time_s.size, np.nan)
+    fitted_c[record.mask] = predict(record.time_s)
+    band[record.mask] = _band(fitted, record.time_s, choice.scale.variance)
+    for array in (fitted_c, band):
+        array.setflags(write=False)
+    return predict, fitted_c, band
+
+
+def _band(fitted: Fitted, time_s: FloatArray, variance: float) -> FloatArray:
+    """Evaluate the curve's standard uncertainty [K] at 2000 places at most, a line between."""
+    model, lead = fitted.model, fitted.model.linear_from
+    marks = fitted.model.blocks.time_s[:: max(fitted.model.blocks.time_s.size // 2000, 1)]
+    columns, slopes = model.at(fitted.values[:lead], marks)
+    jacobian = np.hstack([np.einsum("qnm,m->nq", slopes, fitted.values[lead:]), columns])
+    covariance = fitted.solution.unscaled_covariance() * variance
+    with np.errstate(invalid="ignore"):
+        square = np.einsum("np,pq,nq->n", jacobian, covariance, jacobian)
+    sd = np.sqrt(np.maximum(np.nan_to_num(square), 0.0))
+    return np.asarray(np.interp(time_s, marks, sd))

@@ -1,0 +1,93 @@
+"""The cautions of an estimate: each with the number that raised it and the remedy."""
+
+from __future__ import annotations
+
+from ..records import NoiseSummary, Reader
+from ..uncertainty import Quantity
+from .candidates import Fitted
+from .settings import FitSettings
+from .starts import Record
+
+__all__ = ["reservations"]
+
+# Common practice, no source: five time constants leave 0.7 % of the step.
+ENOUGH_TIME_CONSTANTS = 5.0
+# The share of t50 that the step's formation and the reader's response may each take; from a
+# national thermocouple standard's test method (number not shown where it was seen).
+FORMATION_SHARE = 0.1
+
+
+def reservations(
+    record: Record,
+    fitted: Fitted,
+    quantities: dict[str, Quantity],
+    noise: NoiseSummary,
+    settings: FitSettings,
+    reader: Reader,
+) -> tuple[str, ...]:
+    """Return the cautions in words."""
+    words = []
+    if fitted.form.onset == "found":
+        words.append(
+            "the onset was found from the curve: a real sensor hides the fastest part of its "
+            "response before it, so response times are lower bounds; log a contact or light gate "
+            "([test] onset) to remove this"
+        )
+    if fitted.form.onset == "before" and fitted.form.poles == 2:
+        words.append(
+            "the log starts inside the response, so a direct path beside the slow one can't be "
+            "seen; the response times are those of the two time constants in series"
+        )
+    words += _record_length(record, fitted, quantities)
+    words += _noise(noise)
+    words += _formation(quantities, settings, reader)
+    words += [
+        f"{name} has no {q.open if q.open != 'both' else 'lower or upper'} limit from this record"
+        f" (best fit {q.value:.3g}); log more samples around the fast part, with less noise"
+        for name, q in quantities.items()
+        if q.open and name.startswith("time_constant")
+    ]
+    return tuple(words)
+
+
+def _record_length(record: Record, fitted: Fitted, quantities: dict[str, Quantity]) -> list[str]:
+    begin = quantities["onset_s"].value if "onset_s" in quantities else fitted.model.onset_s
+    slowest = quantities["time_constant_1_s"]
+    covered = (float(record.time_s[-1]) - max(begin, float(record.time_s[0]))) / slowest.value
+    if covered >= ENOUGH_TIME_CONSTANTS:
+        return []
+    became = ""
+    if slowest.low is not None and slowest.high is not None:
+        became = f", and its interval became {slowest.low:.4g} to {slowest.high:.4g} s"
+    words = (
+        f"the record covers {covered:.1f} time constants after the onset, and at least "
+        f"{ENOUGH_TIME_CONSTANTS:g} are wanted{became}; log for longer, until the reading settles"
+    )
+    return [words]
+
+
+def _noise(noise: NoiseSummary) -> list[str]:
+    ratio = noise.samples / noise.effective_samples
+    if ratio <= 1.0:
+        return []
+    words = (
+        f"the residuals are not independent: {noise.samples} samples are worth "
+        f"{noise.effective_samples:.0f}, and the intervals were widened {ratio**0.5:.1f} times; "
+        "look at the residuals, and if they follow the curve try another order or window"
+    )
+    return [words]
+
+
+def _formation(quantities: dict[str, Quantity], settings: FitSettings, reader: Reader) -> list[str]:
+    half = quantities["response_50"].value
+    names = {
+        "the change of medium": ("transfer_s", settings.transfer_s, "change the medium faster"),
+        "the reader's averaging": ("averaging_s", reader.averaging_s, "log faster"),
+        "the reader's filter": ("filter_s", reader.filter_s, "use a quicker input filter"),
+    }
+    return [
+        f"{what} takes {seconds:.3g} s ({key}), more than a tenth of the 50 % time of {half:.3g} s;"
+        f" the model allows for it as a straight ramp or lag, and its own error counts: {remedy}"
+        for what, (key, seconds, remedy) in names.items()
+        if seconds > FORMATION_SHARE * half
+    ]

@@ -1,0 +1,173 @@
+"""From a step's bracket to start values and to the blocks on which it is fitted."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..errors import EstimateError
+from ..records import FloatArray, Step, Trace
+from ..steps.blocks import Blocks, IntArray, graded_edges, reduce
+from ..steps.find import LEAST_SAMPLES, noise_level
+from ..steps.grid import Start, search, time_constant_grid
+from ..thermal.responses import shape_of
+from .model import Form
+from .settings import FitSettings
+
+__all__ = ["Record", "cut", "fit_blocks", "shapes", "zoom"]
+
+# Below this many samples all of them are fitted alone.
+ALL_ALONE = 2500
+_GROWTH = 0.03  # width of a block over its distance from the onset; loses < 0.1 % of information
+_ALONE = 200  # samples that stay alone on either side of an onset
+_COARSE_GROWTH = 0.08
+
+
+@dataclass(frozen=True, eq=False)
+class Record:
+    """The samples of one step that are fitted.
+
+    Attributes
+    ----------
+    time_s, value : ndarray, shape (n,)
+        [s], [degC]
+    weight : ndarray or None
+        1 / sigma^2 of each sample, relative; None where all are equal.
+    spacing_s : float
+        Median sampling interval [s].
+    noise_k : float
+        Robust sample-to-sample noise [K].
+    mask : ndarray of bool
+        These samples in the trace.
+    """
+
+    time_s: FloatArray
+    value: FloatArray
+    weight: FloatArray | None
+    spacing_s: float
+    noise_k: float
+    mask: np.ndarray[tuple[int], np.dtype[np.bool_]]
+
+
+def cut(trace: Trace, step: Step) -> Record:
+    """Take the used samples of a step's window, with their relative weights."""
+    mask = trace.kept & (trace.time_s >= step.window_s[0]) & (trace.time_s <= step.window_s[1])
+    time, value = trace.time_s, trace.temperature_c
+    sigma = trace.sigma_k
+    if not mask.all():
+        time, value = time[mask], value[mask]
+        sigma = None if sigma is None else sigma[mask]
+    if time.size < LEAST_SAMPLES:
+        raise EstimateError(
+            "window_s",
+            f"{time.size} usable samples between {step.window_s[0]:.6g} and "
+            f"{step.window_s[1]:.6g} s, and at least {LEAST_SAMPLES} are needed",
+            "widen the window or log for longer",
+        )
+    weight = None if sigma is None else _weights(sigma)
+    spacing = float(np.median(np.diff(time[:: max(time.size // 100_000, 1)])))
+    spacing /= max(time.size // 100_000, 1)
+    return Record(time, value, weight, spacing, noise_level(value), mask)
+
+
+def _weights(sigma: FloatArray) -> FloatArray | None:
+    """Relative weights with mean one; samples whose sigma isn't known can't be weighted."""
+    if not np.all(np.isfinite(sigma)) or sigma.min() <= 0 or np.ptp(sigma) < 1e-9 * sigma[0]:
+        return None
+    weight = 1.0 / sigma**2
+    return np.asarray(weight / weight.mean())
+
+
+def zoom(record: Record, step: Step, kind: str, *, keep: int = 3) -> tuple[Start, ...]:
+    """Search onset and time constants together, on ever finer blocks around the best onset.
+
+    ``kind`` is that of `steps.grid.search`. A step with a known onset, or none in the record,
+    needs one look only.
+    """
+    time, n = record.time_s, record.time_s.size
+    low, high = step.bracket_s
+    if low == high:
+        first = int(np.searchsorted(time, low))
+        blocks = _blocks(record, graded_edges(n, first, first, growth=_COARSE_GROWTH, alone=20))
+        taus = time_constant_grid(blocks, 44)
+        return search(blocks, np.array([low]), taus, kind=kind, keep=keep)
+    onsets = _first_onsets(record, step)
+    best: tuple[Start, ...] = ()
+    for _ in range(6):
+        first, last = np.searchsorted(time, (onsets[0], onsets[-1]))
+        blocks = _blocks(record, _between(n, int(first), int(last)))
+        best = search(blocks, onsets, time_constant_grid(blocks), kind=kind, keep=keep)
+        if not best:
+            break
+        width = float(np.max(np.diff(onsets)))
+        place = int(np.argmin(np.abs(onsets - best[0].onset_s)))
+        around = onsets[max(place - 2, 0)], onsets[min(place + 2, onsets.size - 1)]
+        if width <= 1.5 * record.spacing_s:
+            break
+        points = min(max(int((around[1] - around[0]) / record.spacing_s) + 1, 5), 25)
+        onsets = np.linspace(*around, points)
+    return best
+
+
+def _first_onsets(record: Record, step: Step) -> FloatArray:
+    """Onsets in the bracket and, for models that begin later than two poles do, some behind it."""
+    low, high = step.bracket_s
+    inside = np.linspace(low, high, 21)
+    room = (record.time_s[-1] - high) / 2
+    if room <= high - low:
+        return inside
+    beyond = high + np.geomspace((high - low) / 10, room, 16)
+    return np.concatenate([inside, beyond])
+
+
+def _between(n: int, first: int, last: int) -> IntArray:
+    """Edges that keep 100 blocks inside the bracket, and grow outside it."""
+    edges = graded_edges(n, first, last, growth=_COARSE_GROWTH, alone=8)
+    if last - first <= 120:
+        return edges
+    inside = np.linspace(first, last, 100).astype(np.intp)
+    return np.unique(np.concatenate([edges[(edges < first) | (edges > last)], inside]))
+
+
+def _blocks(record: Record, edges: IntArray) -> Blocks:
+    return reduce(record.time_s, record.value, record.weight, edges)
+
+
+def fit_blocks(record: Record, onsets_s: list[float]) -> Blocks:
+    """Blocks fine enough to fit models that begin at any of these times.
+
+    Up to 2500 samples all stay alone.
+    """
+    n = record.time_s.size
+    if n <= ALL_ALONE:
+        return _blocks(record, np.arange(n, dtype=np.intp))
+    edges = [np.zeros(1, np.intp)]
+    for onset in onsets_s:
+        at = int(np.clip(np.searchsorted(record.time_s, onset), 0, n - 1))
+        edges.append(graded_edges(n, at, at, growth=_GROWTH, alone=_ALONE))
+    gaps = np.flatnonzero(np.diff(record.time_s) > 5 * record.spacing_s) + 1
+    if gaps.size < 200:  # a block must not reach over a gap; a log full of gaps is just irregular
+        edges.append(gaps)
+    return _blocks(record, np.unique(np.concatenate(edges)))
+
+
+def shapes(form: Form, starts: tuple[Start, ...]) -> list[tuple[tuple[float, ...], float]]:
+    """Turn starts into (shape, onset) for a form."""
+    out = []
+    for start in starts:
+        taus = start.time_constants_s[: form.poles]
+        out.append((shape_of(taus), start.onset_s))
+    return out
+
+
+def grid_kind(form: Form) -> str:
+    """Which grid suits a form."""
+    if form.poles == 1 and not form.zero:
+        return "one"
+    return "free" if form.has_impulse else "series"
+
+
+def known_onset(step: Step, settings: FitSettings) -> float:
+    """Return the onset that isn't fitted: the given one, or the window's first sample."""
+    return step.bracket_s[0] if settings.onset_s != "before" else step.window_s[0]
