@@ -53,7 +53,9 @@ class Network:
 
     def time_constants_s(self) -> list[float]:
         """From the slowest [s]."""
-        return sorted(-1.0 / np.linalg.eigvals(self.matrix()).real)[::-1]
+        return sorted(
+            (float(-1.0 / x.real) for x in np.linalg.eigvals(self.matrix())), reverse=True
+        )
 
     def response_time_s(self, fraction: float) -> float:
         """When the element has shown this share of a step [s]."""
