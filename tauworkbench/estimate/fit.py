@@ -21,7 +21,7 @@ from .final import final_least_squares
 from .record import Estimate
 from .reservations import reservations
 from .settings import FitSettings
-from .starts import Record, cut
+from .starts import cut
 
 __all__ = ["FitSettings", "fit_step", "fit_steps"]
 
@@ -106,22 +106,20 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
     fitted, found = choice.fitted, choice.quantities
     cautions = reservations(record, fitted, found, choice.noise, settings, trace.reader)
     names, covariance = _covariance(choice)
-    predict, fitted_c, band = _curves(trace, record, choice)
-    lmfit_result = final_least_squares(fitted)
+    predict, band = _curves(choice)
     return Estimate(
         step=_step_summary(step, settings, choice),
         fit=_fit_summary(settings, choice),
         transfer=fitted.transfer,
-        fitted_c=fitted_c,
-        residual_k=trace.temperature_c - fitted_c,
+        trace=trace,
         in_fit=record.mask,
-        band_k=band,
         covariance=covariance,
         covariance_names=names,
         cautions=tuple(dict.fromkeys((*trace.cautions, *cautions))),
         coverage=settings.coverage,
         predictor=predict,
-        lmfit_result=lmfit_result,
+        band=band,
+        lmfit_result=final_least_squares(fitted),
     )
 
 
@@ -175,23 +173,20 @@ def _covariance(choice: Choice) -> tuple[tuple[str, ...], FloatArray]:
 
 
 def _curves(
-    trace: Trace, record: Record, choice: Choice
-) -> tuple[Callable[[FloatArray], FloatArray], FloatArray, FloatArray]:
-    """Return the predictor, the fitted curve on the trace, and its standard uncertainty."""
+    choice: Choice,
+) -> tuple[Callable[[FloatArray], FloatArray], Callable[[FloatArray], FloatArray]]:
+    """Return the fitted curve and its standard uncertainty, as functions of time."""
     fitted = choice.fitted
 
     def predict(time_s: FloatArray) -> FloatArray:
-        flat = np.atleast_1d(np.asarray(time_s, float))
+        flat = np.asarray(time_s, float)
         curve = fitted.offset_c + fitted.model.curve(fitted.values, flat.ravel())
-        return np.asarray(curve.reshape(np.shape(time_s)))
+        return np.asarray(curve.reshape(flat.shape))
 
-    fitted_c = np.full(trace.time_s.size, np.nan)
-    band = np.full(trace.time_s.size, np.nan)
-    fitted_c[record.mask] = predict(record.time_s)
-    band[record.mask] = _band(fitted, record.time_s, choice.scale.variance)
-    for array in (fitted_c, band):
-        array.setflags(write=False)
-    return predict, fitted_c, band
+    def band(time_s: FloatArray) -> FloatArray:
+        return _band(fitted, time_s, choice.scale.variance)
+
+    return predict, band
 
 
 def _band(fitted: Fitted, time_s: FloatArray, variance: float) -> FloatArray:

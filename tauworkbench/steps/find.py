@@ -209,7 +209,7 @@ def _several(record: _Record) -> tuple[Step, ...]:
         found.append((place, end, last - level))
         level = last
     real = _believed(blocks, found, record.noise_k)
-    stops = [p for p, _, _ in real[1:]] + [blocks.time_s.size]
+    stops = [p for p, _, _ in real[1:]] + [blocks.time_s.size] * bool(real)
     return tuple(
         _piece(record, blocks, k + 1, place, stop)
         for k, ((place, _, _), stop) in enumerate(zip(real, stops, strict=True))

@@ -64,7 +64,6 @@ def estimate_on(
         after = np.maximum(time - onset_s, 0)
         return start_c + (final_c - start_c) * step_response(transfer, after)
 
-    fitted = np.where(inside, predictor(trace.time_s), np.nan)
     sigma = 0.05
     times = {p: q(response_time(transfer, float(p) / 100)) for p in
              ("10", "50", "63.2", "90", "95", "99")}  # fmt: skip
@@ -99,10 +98,9 @@ def estimate_on(
         step=step,
         fit=fit,
         transfer=transfer,
-        fitted_c=fitted,
-        residual_k=np.where(inside, trace.temperature_c - fitted, np.nan),
+        trace=trace,
         in_fit=inside & trace.kept,
-        band_k=np.where(inside, 0.01, np.nan),
+        band=lambda time: np.full(time.shape, 0.01),
         covariance=np.eye(len(taus)) * 1e-4,
         covariance_names=tuple(fit.parameters),
         cautions=("the onset was found to 0.020 s; log a contact marker to know it better",),
