@@ -158,7 +158,7 @@ def _pictures(result: Result, estimate: Estimate) -> list[Picture]:
             *steps,
             figures.step_alt(result.trace, estimate),
             "Above: the sensor's temperature and the fitted curve. Beneath: measured minus fitted."
-            + _onset_words(estimate),
+            + _caption(result, estimate),
         ),
         Picture(
             *ideal,
@@ -174,10 +174,15 @@ def _both(draw: Callable[[figures.Style], Figure]) -> tuple[str, str]:
     return figures.data_uri(draw(figures.LIGHT)), figures.data_uri(draw(figures.DARK))
 
 
-def _onset_words(estimate: Estimate) -> str:
+def _caption(result: Result, estimate: Estimate) -> str:
+    said = " The grey band there is one sample's standard uncertainty either way."
     if estimate.step.onset_s is None:
-        return " The fitted samples start inside the response, so no onset is drawn."
-    return f" The bar at the onset is its {words.percent(estimate.coverage)} interval."
+        said += " The fitted samples start inside the response, so no onset is drawn."
+    else:
+        said += f" The bar at the onset is its {words.percent(estimate.coverage)} interval."
+    if not result.trace.kept.all():
+        said += " A cross at the edge is a sample set aside that lies beyond it or has no value."
+    return said
 
 
 def _uncertainty(result: Result) -> Section:

@@ -126,7 +126,7 @@ def response_figure(estimate: Estimate, *, style: Style = LIGHT) -> Figure:
         if name in _LABELLED:
             axes.annotate(
                 f"{name} % in {_short(time_s)} s", (time_s.value, height), (9, -11),
-                textcoords="offset points", fontsize=9, color=style.text,
+                textcoords="offset points", fontsize=10, color=style.text,
             )  # fmt: skip
     _dress(axes, style)
     axes.set_xlim(0, longest)
@@ -174,7 +174,7 @@ def _dress(axes: Axes, style: Style) -> None:
     axes.set_axisbelow(True)
     axes.spines[["top", "right"]].set_visible(False)
     axes.spines[["left", "bottom"]].set_color(style.quiet)
-    axes.tick_params(colors=style.text, labelsize=9)
+    axes.tick_params(colors=style.text, labelsize=10)
     axes.xaxis.set_major_locator(MaxNLocator(7, steps=[1, 2, 2.5, 5, 10]))
     axes.yaxis.set_major_locator(MaxNLocator(5, steps=[1, 2, 2.5, 5, 10]))
     axes.ticklabel_format(useOffset=False)
@@ -189,7 +189,7 @@ def _legend(figure: Figure, style: Style) -> None:
         handles, labels = axes.get_legend_handles_labels()
         entries.update(zip(labels, handles, strict=True))
     figure.legend(
-        list(entries.values()), list(entries), loc="outside upper left", ncols=3, fontsize=8.5,
+        list(entries.values()), list(entries), loc="outside upper left", ncols=3, fontsize=9.5,
         frameon=False, labelcolor=style.text, columnspacing=1.6, handlelength=2.2, markerscale=1.6,
     )  # fmt: skip
 

@@ -67,13 +67,10 @@ def draw_temperature(axes: Axes, view: View) -> None:
     time = _curve_times(view)
     curve = estimate.predict(time)
     axes.plot(time, curve, color=style.fit, lw=1.2, label="fit", zorder=4)
-    index = _thinned(view.inside(np.isfinite(estimate.band_k) & np.isfinite(estimate.fitted_c)))
-    half = _quantile(estimate.coverage) * estimate.band_k[index]
-    middle = estimate.fitted_c[index]
+    half = _quantile(estimate.coverage) * estimate.band(time)
     label = f"{words.percent(estimate.coverage)} band of the fit (noise alone)"
     axes.fill_between(
-        trace.time_s[index], middle - half, middle + half, color=style.fit, alpha=0.3, lw=0,
-        label=label, zorder=3,
+        time, curve - half, curve + half, color=style.fit, alpha=0.3, lw=0, label=label, zorder=3
     )  # fmt: skip
     used = view.inside(trace.kept)
     _set_limits(axes, np.concatenate([trace.temperature_c[used], curve[np.isfinite(curve)]]))
@@ -90,7 +87,7 @@ def draw_residual(axes: Axes, view: View, scale: float) -> None:
     half = scale * sigma[index]
     axes.fill_between(
         trace.time_s[index], -half, half, color=style.quiet, alpha=0.25, lw=0, zorder=1,
-        label="± one sample's standard uncertainty",
+        label="± one sample's uncertainty",
     )  # fmt: skip
     for edge in (-half, half):  # over the samples, which would hide the band where they are dense
         axes.plot(trace.time_s[index], edge, color=style.text, lw=0.8, ls=":", zorder=5)
@@ -137,7 +134,7 @@ def _draw_aside(axes: Axes, view: View, value: FloatArray) -> None:
     shown = np.clip(np.nan_to_num(value[index], nan=low, posinf=high, neginf=low), low, high)
     axes.plot(
         view.trace.time_s[index], shown, ls="", marker="x", ms=5.5, mew=1.4, clip_on=False,
-        color=view.style.aside, label="set aside (at the edge: beyond it, or no value)", zorder=5,
+        color=view.style.aside, label="set aside", zorder=5,
     )  # fmt: skip
 
 
