@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -11,12 +11,11 @@ from ..fitting.least_squares import Solution, solve_separable
 from ..progress import Watch
 from ..progress import step as tick
 from ..records import FloatArray, Step
-from ..steps.blocks import Blocks
 from ..thermal.drive import Drive
 from ..thermal.transfer import TransferFunction
 from .model import Form, StepModel
 from .settings import FitSettings
-from .starts import Record, fit_blocks, grid_kind, shapes, zoom
+from .starts import Record, fit_blocks, grid_kind, search_blocks, shapes, zoom
 
 __all__ = ["Fitted", "fit_candidates", "forms"]
 
@@ -102,48 +101,67 @@ def fit_candidates(
             raise EstimateError(
                 "log", "no response could be found in the window", "choose a window with one step"
             )
-    blocks = fit_blocks(record, sorted({s.onset_s for group in starts.values() for s in group}))
+    onsets = sorted({s.onset_s for group in starts.values() for s in group})
+    rough, fine = search_blocks(record, onsets), fit_blocks(record, onsets)
     fitted = []
     for k, form in enumerate(wanted):
         tick(watch, k, len(wanted), f"fitting {form.name}")
-        model = StepModel(form, blocks, drive, step.bracket_s[0], settings.start_c is not None)
+        model = StepModel(form, rough, drive, step.bracket_s[0], settings.start_c is not None)
         places = shapes(form, starts[grid_kind(form)])
-        fitted.append(_best(record, blocks, model, places, offset, watch))
+        near = _nearest(record, model, places, offset, watch)
+        fitted.append(_best(record, replace(model, blocks=fine), near, offset, watch))
     return fitted
 
 
-def _best(
+def _nearest(
     record: Record,
-    blocks: Blocks,
     model: StepModel,
     places: list[tuple[tuple[float, ...], float]],
     offset: float,
     watch: Watch,
-) -> Fitted:
-    """Polish the starts, then try the onset from its neighbours: its cost has kinks at samples."""
-    target = model.target(offset)
-    bounds = _bounds(record, model)
+) -> FloatArray:
+    """Polish the grid's places on coarse blocks and return the best nonlinear values."""
+    target, bounds = model.target(offset), _bounds(record, model)
+    runs = [
+        solve_separable(
+            model,
+            target,
+            _start(model, shape, onset),
+            bounds=bounds,
+            max_steps=40,
+            tolerance=1e-5,
+            watch=watch,
+        )
+        for shape, onset in places
+    ]
+    return min(runs, key=lambda s: s.cost).values[: model.linear_from]
 
-    def polish(start: list[float], steps: int) -> Solution:
+
+def _best(
+    record: Record, model: StepModel, near: FloatArray, offset: float, watch: Watch
+) -> Fitted:
+    """Solve on the fine blocks; with few samples in the rise, from neighbouring onsets too."""
+    target, bounds = model.target(offset), _bounds(record, model)
+
+    def solve(start: FloatArray) -> Solution:
         return solve_separable(
-            model, target, start, bounds=bounds, max_steps=steps, watch=watch, tolerance=1e-9
+            model, target, start, bounds=bounds, max_steps=60, watch=watch, tolerance=1e-9
         )
 
-    runs = [polish(_start(model, shape, onset), 60) for shape, onset in places]
-    best = min(runs, key=lambda s: s.cost)
+    best = solve(near)
     if model.form.onset == "found" and _coarse(record, model, best):
         place = model.form.shape_size
         for shift in (-1.0, -0.5, 0.5, 1.0):
             start = best.values[: model.linear_from].copy()
             start[place] += shift * record.spacing_s
-            best = min(best, polish(list(start), 30), key=lambda s: s.cost)
-    cost = best.cost + blocks.scatter
+            best = min(best, solve(start), key=lambda s: s.cost)
+    cost = best.cost + model.blocks.scatter
     return Fitted(model.form, model, best, cost, record.time_s.size, offset)
 
 
 def _coarse(record: Record, model: StepModel, solution: Solution) -> bool:
-    """Whether the onset's kinks between samples can matter: few samples in the fastest rise."""
-    return model.taus(solution.values)[-1] < 20 * record.spacing_s or model.form.poles == 1
+    """Whether the cost's kinks at the samples can hold the onset: few samples in the rise."""
+    return model.taus(solution.values)[0] < 20 * record.spacing_s
 
 
 def _start(model: StepModel, shape: tuple[float, ...], onset: float) -> list[float]:

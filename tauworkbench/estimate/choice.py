@@ -6,9 +6,10 @@ from dataclasses import dataclass
 
 from ..errors import EstimateError
 from ..records import Candidate, NoiseSummary
+from ..thermal.responses import response_time
 from ..uncertainty import Quantity
 from .candidates import Fitted
-from .derived import derive
+from .derived import RESPONSES
 from .intervals import Scale, intervals, second_pole_rise
 from .residuals import noise_of
 from .settings import FitSettings
@@ -97,5 +98,5 @@ def _check_slowest(slowest: Quantity, record: Record) -> None:
 
 def _candidate(fit: Fitted, chosen: bool, worth: float, refused: str) -> Candidate:
     aicc, bic = fit.criteria(worth)
-    t63 = derive(fit.model, fit.values, fit.offset_c)["response_63.2"][0]
+    t63 = response_time(fit.transfer, RESPONSES["63.2"])
     return Candidate(fit.form.name, aicc, bic, chosen, fit.variance**0.5, t63, refused)

@@ -14,6 +14,7 @@ profile likelihood interval, for every g at once.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from scipy.interpolate import PchipInterpolator
@@ -63,8 +64,13 @@ class _Node:
 
     hard: float
     rise: float
-    derived: Derived
+    fitted: Fitted
+    values: FloatArray
     covariance: FloatArray
+
+    @cached_property
+    def derived(self) -> Derived:
+        return derive(self.fitted.model, self.values, self.fitted.offset_c)
 
 
 def intervals(fitted: Fitted, scale: Scale) -> dict[str, Quantity]:
@@ -171,7 +177,7 @@ def _solve_at(fitted: Fitted, place: int, hard: float, scale: Scale) -> _Node:
     covariance = found.unscaled_covariance() * scale.variance
     covariance = np.insert(np.insert(covariance, place, 0.0, 0), place, 0.0, 1)
     rise = (found.cost - solution.cost) / scale.variance
-    return _Node(hard, max(rise, 0.0), derive(model, full, fitted.offset_c), covariance)
+    return _Node(hard, max(rise, 0.0), fitted, full, covariance)
 
 
 class _Curve:

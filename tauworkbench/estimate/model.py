@@ -120,9 +120,12 @@ class StepModel(Separable):
         since = time_s - self.onset_of(values)
         lead = [] if self.known_start else [np.ones_like(since)]
         none = np.zeros((len(lead), since.size))
-        found = {k: self.drive.integral(k, shape, since) for k in self._needed()}
+        step, impulse, step_slopes = self.drive.step(shape, since)
+        found = {1: step, 0: impulse}
+        found |= {k: self.drive.integral(k, shape, since) for k in self._needed() - {0, 1}}
         plain = np.array([*lead, *(found[k] for k in form.orders)])
-        by_shape = np.array([self.drive.slopes(k, shape, since) for k in form.orders])
+        further = [self.drive.slopes(k, shape, since) for k in form.orders[1:]]
+        by_shape = np.array([step_slopes, *further])
         slopes = [np.vstack([none, by_shape[:, i]]) for i in range(form.shape_size)]
         if form.has_time:
             slopes.append(np.vstack([none, *(-found[k - 1] for k in form.orders)]))

@@ -15,13 +15,14 @@ from ..thermal.responses import shape_of
 from .model import Form
 from .settings import FitSettings
 
-__all__ = ["Record", "cut", "fit_blocks", "shapes", "zoom"]
+__all__ = ["Record", "cut", "fit_blocks", "search_blocks", "shapes", "zoom"]
 
 # Below this many samples all of them are fitted alone.
 ALL_ALONE = 2500
 _GROWTH = 0.03  # width of a block over its distance from the onset; loses < 0.1 % of information
 _ALONE = 200  # samples that stay alone on either side of an onset
-_COARSE_GROWTH = 0.08
+_COARSE_GROWTH = 0.12  # for the search, where only the right basin is wanted
+_NEAR_ENOUGH = 0.15  # onset step over the fastest time constant from which a polish converges
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,8 +67,8 @@ def cut(trace: Trace, step: Step) -> Record:
             "widen the window or log for longer",
         )
     weight = None if sigma is None else _weights(sigma)
-    spacing = float(np.median(np.diff(time[:: max(time.size // 100_000, 1)])))
-    spacing /= max(time.size // 100_000, 1)
+    stride = max(time.size // 20_000, 1)
+    spacing = float(np.median(np.diff(time[::stride]))) / stride
     return Record(time, value, weight, spacing, noise_level(value), mask)
 
 
@@ -94,7 +95,7 @@ def zoom(record: Record, step: Step, kind: str, *, keep: int = 3) -> tuple[Start
         return search(blocks, np.array([low]), taus, kind=kind, keep=keep)
     onsets = _first_onsets(record, step)
     best: tuple[Start, ...] = ()
-    for _ in range(6):
+    for _ in range(8):
         first, last = np.searchsorted(time, (onsets[0], onsets[-1]))
         blocks = _blocks(record, _between(n, int(first), int(last)))
         best = search(blocks, onsets, time_constant_grid(blocks), kind=kind, keep=keep)
@@ -103,35 +104,39 @@ def zoom(record: Record, step: Step, kind: str, *, keep: int = 3) -> tuple[Start
         width = float(np.max(np.diff(onsets)))
         place = int(np.argmin(np.abs(onsets - best[0].onset_s)))
         around = onsets[max(place - 2, 0)], onsets[min(place + 2, onsets.size - 1)]
-        if width <= 1.5 * record.spacing_s:
+        if width <= max(1.5 * record.spacing_s, _NEAR_ENOUGH * best[0].time_constants_s[-1]):
             break
-        points = min(max(int((around[1] - around[0]) / record.spacing_s) + 1, 5), 25)
-        onsets = np.linspace(*around, points)
+        onsets = np.linspace(*around, 13)
     return best
 
 
 def _first_onsets(record: Record, step: Step) -> FloatArray:
     """Onsets in the bracket and, for models that begin later than two poles do, some behind it."""
     low, high = step.bracket_s
-    inside = np.linspace(low, high, 21)
+    inside = np.linspace(low, high, 13)
     room = (record.time_s[-1] - high) / 2
     if room <= high - low:
         return inside
-    beyond = high + np.geomspace((high - low) / 10, room, 16)
+    beyond = high + np.geomspace((high - low) / 10, room, 12)
     return np.concatenate([inside, beyond])
 
 
 def _between(n: int, first: int, last: int) -> IntArray:
     """Edges that keep 100 blocks inside the bracket, and grow outside it."""
-    edges = graded_edges(n, first, last, growth=_COARSE_GROWTH, alone=8)
-    if last - first <= 120:
+    edges = graded_edges(n, first, last, growth=_COARSE_GROWTH, alone=6)
+    if last - first <= 60:
         return edges
-    inside = np.linspace(first, last, 100).astype(np.intp)
+    inside = np.linspace(first, last, 50).astype(np.intp)
     return np.unique(np.concatenate([edges[(edges < first) | (edges > last)], inside]))
 
 
 def _blocks(record: Record, edges: IntArray) -> Blocks:
     return reduce(record.time_s, record.value, record.weight, edges)
+
+
+def search_blocks(record: Record, onsets_s: list[float]) -> Blocks:
+    """Some 150 blocks around these onsets, on which to polish a search's places."""
+    return _blocks(record, _around(record, onsets_s, growth=0.06, alone=16))
 
 
 def fit_blocks(record: Record, onsets_s: list[float]) -> Blocks:
@@ -142,14 +147,23 @@ def fit_blocks(record: Record, onsets_s: list[float]) -> Blocks:
     n = record.time_s.size
     if n <= ALL_ALONE:
         return _blocks(record, np.arange(n, dtype=np.intp))
+    return _blocks(record, _around(record, onsets_s, growth=_GROWTH, alone=_ALONE))
+
+
+def _around(record: Record, onsets_s: list[float], *, growth: float, alone: int) -> IntArray:
+    """Edges that are fine near each of the onsets; onsets that lie together count once."""
+    n = record.time_s.size
     edges = [np.zeros(1, np.intp)]
+    last = -n
     for onset in onsets_s:
         at = int(np.clip(np.searchsorted(record.time_s, onset), 0, n - 1))
-        edges.append(graded_edges(n, at, at, growth=_GROWTH, alone=_ALONE))
+        if at - last > alone // 2:
+            edges.append(graded_edges(n, at, at, growth=growth, alone=alone))
+            last = at
     gaps = np.flatnonzero(np.diff(record.time_s) > 5 * record.spacing_s) + 1
     if gaps.size < 200:  # a block must not reach over a gap; a log full of gaps is just irregular
         edges.append(gaps)
-    return _blocks(record, np.unique(np.concatenate(edges)))
+    return np.unique(np.concatenate(edges))
 
 
 def shapes(form: Form, starts: tuple[Start, ...]) -> list[tuple[tuple[float, ...], float]]:

@@ -21,7 +21,6 @@ class Named:
     low: float = -np.inf
     high: float = np.inf
     vary: bool = True
-    expression: str = ""
 
 
 def minimise(
@@ -35,7 +34,7 @@ def minimise(
     Parameters
     ----------
     parameters : mapping of str to Named
-        Varying ones in the order of the model's values; those with an expression after them.
+        Varying ones in the order of the model's values.
     model : callable
         ``model(values) -> (weighted residual (n,), jacobian (n, p))``.
 
@@ -47,11 +46,8 @@ def minimise(
 
     table = lmfit.Parameters()
     for name, p in parameters.items():
-        if p.expression:
-            table.add(name, expr=p.expression)
-        else:
-            table.add(name, value=p.value, min=p.low, max=p.high, vary=p.vary)
-    names = [n for n, p in parameters.items() if p.vary and not p.expression]
+        table.add(name, value=p.value, min=p.low, max=p.high, vary=p.vary)
+    names = [n for n, p in parameters.items() if p.vary]
 
     def values(current: Any) -> FloatArray:
         return np.array([current[n].value for n in names])

@@ -32,7 +32,7 @@ class Start:
     explained: float
 
 
-def time_constant_grid(blocks: Blocks, points: int = 28) -> FloatArray:
+def time_constant_grid(blocks: Blocks, points: int = 22) -> FloatArray:
     """Time constants from a fraction of the sampling to three times the record [s]."""
     length = float(blocks.time_s[-1] - blocks.time_s[0])
     gap = float(np.min(np.diff(blocks.time_s)))

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..records import FloatArray
+from .plain import plain_step
 from .responses import Shape, shape_integral, shape_slopes
 
 __all__ = ["Drive"]
@@ -32,6 +33,16 @@ class Drive:
 
     means_s: tuple[float, ...] = ()
     filter_rates: tuple[float, ...] = ()
+
+    def step(self, shape: Shape, time_s: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Step answer, its time derivative and its slopes, as `plain.plain_step` gives them."""
+        if not self.means_s and not self.filter_rates:
+            return plain_step(shape, time_s)
+        return (
+            self.integral(1, shape, time_s),
+            self.integral(0, shape, time_s),
+            self.slopes(1, shape, time_s),
+        )
 
     def integral(self, k: int, shape: Shape, time_s: FloatArray) -> FloatArray:
         """`shape_integral` through this chain, shape (n,)."""
