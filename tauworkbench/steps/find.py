@@ -26,6 +26,8 @@ _LEAST_SHARE = 0.1
 _BLOCKS = 120
 _PIECE_BLOCKS = 150
 _LOOK = 20_000
+# Five samples make a baseline; with fewer, onset and amplitude are one and the same thing.
+_BASELINE = 5
 
 
 @dataclass(frozen=True, eq=False)
@@ -143,13 +145,40 @@ def _single(record: _Record, blocks: Blocks, window: tuple[float, float], onset:
     width = float(np.max(np.diff(blocks.time_s)))
     low, high = onset - 1.5 * width, onset + 1.5 * width
     first = int(np.searchsorted(record.time_s, low))
-    # five samples make a baseline; with fewer, onset and amplitude are one and the same thing
-    if int(np.searchsorted(record.time_s, onset)) < 5:
-        return _whole(record, window, 1, before=True)
+    if onset < record.time_s[_BASELINE]:
+        inside = _onset_inside(record, blocks)
+        if inside is None:
+            return _whole(record, window, 1, before=True)
+        return _single(record, blocks, window, inside)
     start, final = _levels(record, max(first, 1), record.time_s.size)
     _check_rise(record, start, final)
     low = max(low, float(record.time_s[0]))
     return Step(1, window, (low, min(high, float(record.time_s[-1]))), start, final)
+
+
+def _onset_inside(record: _Record, blocks: Blocks) -> float | None:
+    """Look again, with a finer grid, whether an onset inside the record explains more.
+
+    A coarse grid at a high signal to noise may prefer a start before the record by its own error.
+    """
+    taus = time_constant_grid(blocks, 60)
+    inside = _candidates(blocks)
+    inside = inside[inside >= record.time_s[_BASELINE]]
+    found = search(blocks, inside, taus, kind="series", keep=1)
+    before = search(blocks, blocks.time_s[:1], taus, kind="free", keep=1)
+    if not found or (before and before[0].explained >= found[0].explained):
+        return None
+    width = float(np.max(np.diff(blocks.time_s)))
+    stop = int(np.searchsorted(record.time_s, found[0].onset_s - 1.5 * width))
+    return found[0].onset_s if _flat(record, max(stop, _BASELINE)) else None
+
+
+def _flat(record: _Record, stop: int) -> bool:
+    """Whether the first samples have one level: half against half, in standard deviations."""
+    half = stop // 2
+    apart = float(np.mean(record.value[half:stop]) - np.mean(record.value[:half]))
+    u = record.noise_k * np.sqrt(1 / half + 1 / (stop - half))
+    return abs(apart) <= 4 * u
 
 
 def _whole(record: _Record, window: tuple[float, float], number: int, *, before: bool) -> Step:
