@@ -49,7 +49,7 @@ def choose(record: Record, fits: list[Fitted], settings: FitSettings) -> Choice:
     best, refused = fits[0], {}
     for fit in fits[1:]:
         gain = best.criteria(worth)[0] - fit.criteria(worth)[0]
-        words = _objection(fit, gain, _scale(fit, inflation, settings.coverage))
+        words = _objection(fit, gain, _scale(fit, inflation, settings.coverage), record)
         if words:
             refused[fit.form.name] = words
         else:
@@ -66,10 +66,18 @@ def _scale(fit: Fitted, inflation: float, coverage: float) -> Scale:
     return Scale(fit.variance * inflation, fit.samples / inflation - fit.values.size, coverage)
 
 
-def _objection(fit: Fitted, gain: float, scale: Scale) -> str:
+def _objection(fit: Fitted, gain: float, scale: Scale, record: Record) -> str:
     """Why a richer model isn't taken; empty when it is."""
     if gain <= LEAST_GAIN:
         return f"AICc gain {gain:.1f}, more than {LEAST_GAIN:g} needed"
+    if fit.form.poles == 2 and fit.form.onset == "found":
+        fastest = fit.transfer.time_constants_s[1]
+        if fastest < record.spacing_s:
+            # between two samples an onset and a fast pole draw the same curve
+            return (
+                f"the second time constant of {fastest:.2g} s is shorter than the sampling "
+                f"interval of {record.spacing_s:.2g} s, where it can't be told from the onset"
+            )
     if fit.form.poles == 2 and second_pole_rise(fit, scale) <= scale.quantile**2:
         return "the second time constant can't be told from zero"
     if fit.form.zero or fit.form.dead_time or fit.form.drift:

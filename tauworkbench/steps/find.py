@@ -145,11 +145,11 @@ def _single(record: _Record, blocks: Blocks, window: tuple[float, float], onset:
     width = float(np.max(np.diff(blocks.time_s)))
     low, high = onset - 1.5 * width, onset + 1.5 * width
     first = int(np.searchsorted(record.time_s, low))
-    if onset < record.time_s[_BASELINE]:
+    if onset < max(record.time_s[_BASELINE], blocks.time_s[2]):
         inside = _onset_inside(record, blocks)
         if inside is None:
             return _whole(record, window, 1, before=True)
-        return _single(record, blocks, window, inside)
+        low, high = inside - 1.5 * width, inside + 1.5 * width
     start, final = _levels(record, max(first, 1), record.time_s.size)
     _check_rise(record, start, final)
     low = max(low, float(record.time_s[0]))
