@@ -21,6 +21,8 @@ __all__ = ["Choice", "choose"]
 # likelihood is zero in half of the records and chi-squared in the other, so that a gain of 4 (a
 # rise of 6) comes by chance in 0.7 % of one-pole records.
 LEAST_GAIN = 4.0
+# A rival this much worse by AICc has no support to speak of (Burnham and Anderson; from memory).
+RULED_OUT = 10.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,6 +35,7 @@ class Choice:
     noise: NoiseSummary
     inflation: float
     candidates: tuple[Candidate, ...]
+    runner_up_s: float | None
 
 
 def choose(record: Record, fits: list[Fitted], settings: FitSettings) -> Choice:
@@ -59,7 +62,15 @@ def choose(record: Record, fits: list[Fitted], settings: FitSettings) -> Choice:
     quantities = intervals(best, scale)
     _check_slowest(quantities["time_constant_1_s"], record)
     table = tuple(_candidate(f, f is best, worth, refused.get(f.form.name, "")) for f in fits)
-    return Choice(best, scale, quantities, noise, inflation, table)
+    runner_up = _runner_up(table)
+    return Choice(best, scale, quantities, noise, inflation, table, runner_up)
+
+
+def _runner_up(table: tuple[Candidate, ...]) -> float | None:
+    """63.2 % time [s] of the best rival whose AICc doesn't rule it out; None without one."""
+    chosen = next(c for c in table if c.chosen)
+    rivals = [c for c in table if not c.chosen and c.aicc < chosen.aicc + RULED_OUT]
+    return min(rivals, key=lambda c: c.aicc).response_time_63_s if rivals else None
 
 
 def _scale(fit: Fitted, inflation: float, coverage: float) -> Scale:

@@ -14,6 +14,7 @@ from ..records import FitSummary, FloatArray, Step, StepSummary, Trace
 from ..steps.find import find_steps
 from ..thermal.drive import Drive
 from ..uncertainty import Quantity
+from .budget import Part, budget_of
 from .candidates import Fitted, fit_candidates
 from .choice import Choice, choose
 from .derived import RESPONSES
@@ -120,6 +121,9 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
         predictor=predict,
         band=band,
         lmfit_result=final_least_squares(fitted),
+        budget=budget_of(
+            Part(trace, record, fitted, found, choice.scale.quantile, choice.runner_up_s), settings
+        ),
     )
 
 

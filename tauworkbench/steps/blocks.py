@@ -36,6 +36,8 @@ class Blocks:
         Weighted sum of squares of the samples about their block's own straight line.
     scatter_freedom : float
         Its degrees of freedom.
+    edges : ndarray
+        First sample of each block.
     """
 
     time_s: FloatArray
@@ -45,6 +47,7 @@ class Blocks:
     count: FloatArray
     scatter: float
     scatter_freedom: float
+    edges: IntArray
 
 
 def even_edges(n: int, blocks: int) -> IntArray:
@@ -92,7 +95,7 @@ def reduce(
     count = np.diff(np.append(edges, n)).astype(float)
     if count.max(initial=0) <= 1:
         ones = np.ones(n) if weight is None else weight
-        return Blocks(time_s, np.zeros(n), value, ones, count, 0.0, 0.0)
+        return Blocks(time_s, np.zeros(n), value, ones, count, 0.0, 0.0, edges)
     total = count if weight is None else np.add.reduceat(weight, edges)
 
     def mean(x: FloatArray) -> FloatArray:
@@ -107,4 +110,4 @@ def reduce(
     wide = count >= 4  # fewer samples than that say little beside their own line
     scatter = float(np.sum((total * np.maximum(var_value - along, 0.0))[wide]))
     freedom = float(np.sum(count[wide] - 2))
-    return Blocks(mean_time, np.sqrt(var_time), mean_value, total, count, scatter, freedom)
+    return Blocks(mean_time, np.sqrt(var_time), mean_value, total, count, scatter, freedom, edges)
