@@ -1,0 +1,204 @@
+"""From choices and what they came to, to the screen: one pure function, `screen_of`."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+from types import MappingProxyType
+from typing import Any
+
+from ..errors import InputError
+from ..session.choices import Choices
+from ..session.stages import Resolved
+from . import words
+from .answer import Answer
+from .code import code_of
+from .fields import Typed, field_shown, missing_words
+from .parts import PARTS, Part
+from .picture import curve_of, full_of, markers_of, plot_of, step_of
+from .screen import FieldShown, History, PartShown, ProgressShown, ResultShown, Screen, Status
+
+__all__ = ["State", "done_parts", "screen_of"]
+
+_EMPTY: Mapping[str, Any] = MappingProxyType({})
+
+
+@dataclass(frozen=True)
+class State:
+    """What the page stands on, besides what the choices come to.
+
+    Attributes
+    ----------
+    choices : Choices
+        What was chosen.
+    typed : mapping of str to Typed
+        Texts in fields that can't be used; they stay, with the reason.
+    unfolded, more : mapping of str to bool
+        By part: whether the user unfolded it, and its further choices. Where they said nothing, a
+        part is unfolded when it was not done as the log was opened (``done_at_first``).
+    view_s : (low, high) or None
+        The times in view; None for the whole log.
+    dark, width, ratio
+        The page's theme, the plot's width in pixels, the screen's pixel ratio.
+    run_file, folder : str
+        Where to save to.
+    """
+
+    choices: Choices = field(default_factory=Choices)
+    typed: Mapping[str, Typed] = field(default_factory=lambda: _EMPTY)
+    unfolded: Mapping[str, bool] = field(default_factory=lambda: _EMPTY)
+    more: Mapping[str, bool] = field(default_factory=lambda: _EMPTY)
+    done_at_first: frozenset[str] = frozenset()
+    view_s: tuple[float, float] | None = None
+    dark: bool = False
+    width: int = 1000
+    ratio: float = 1.0
+    run_file: str = ""
+    folder: str = ""
+    save_problems: Mapping[str, str] = field(default_factory=lambda: _EMPTY)
+    saved: str = ""
+    notice: str = ""
+    offer: str = ""
+    undo: bool = False
+    redo: bool = False
+    stopped: bool = False
+    progress: ProgressShown | None = None
+    answer: Answer | None = None
+
+    def but(self, **changes: Any) -> State:
+        """Return a copy with some fields changed."""
+        return replace(self, **changes)
+
+
+def screen_of(state: State, found: Resolved) -> Screen:
+    """Return everything that the page shows.
+
+    Parameters
+    ----------
+    state : State
+        What the page stands on.
+    found : Resolved
+        What its choices come to, as far as that is known.
+    """
+    parts = tuple(_part(part, state, found) for part in PARTS)
+    answer, estimates = state.answer, found.get("estimates")
+    fresh = found.get("result") is not None
+    curve = curve_of(found)
+    step = step_of(found, state.choices)
+    shown = None
+    if answer is not None and answer.trace is found.get("trace"):
+        shown = answer.estimate
+    plot = None if curve is None else plot_of(state, curve, found, shown)
+    return Screen(
+        parts=parts,
+        plot=plot,
+        markers=() if curve is None else markers_of(state.choices, curve, step, estimates),
+        full_s=(0.0, 1.0) if curve is None else full_of(curve),
+        status=_status(state, found),
+        progress=state.progress,
+        result=ResultShown() if answer is None else replace(answer.shown, stale=not fresh),
+        code=code_of(state),
+        history=History(state.undo, state.redo),
+        offer=state.offer,
+        can_fit=bool(found.pending) and found.pending[0].stage == "estimates",
+        can_save=fresh,
+    )
+
+
+def done_parts(found: Resolved) -> frozenset[str]:
+    """Name the parts that a log or a run file has settled by itself; they begin folded."""
+    return frozenset(p.name for p in PARTS if p.folds and p.stages[-1] in found.values)
+
+
+def _part(part: Part, state: State, found: Resolved) -> PartShown:
+    columns = words.column_options(found.get("log"))
+    error = next((found.errors[s] for s in part.stages if s in found.errors), None)
+    fields = _fields(part, state, found, columns, error)
+    blamed = any(f.problem for f in fields)
+    problem = "" if error is None or blamed or missing_words(error) else words.error_words(error)
+    done = part.stages[-1] in found.values
+    unfolded = state.unfolded.get(part.name, part.name not in state.done_at_first)
+    return PartShown(
+        name=part.name,
+        title=part.title,
+        words=_words(part, state, found, error, blamed or bool(problem)),
+        fields=fields,
+        unfolded=unfolded or bool(problem) or (blamed and not done),
+        more=state.more.get(part.name, False)
+        or any(f.place == "more" and f.problem for f in fields),
+        problem=problem,
+        notes=words.notes_of(part.name, found),
+    )
+
+
+def _fields(
+    part: Part,
+    state: State,
+    found: Resolved,
+    columns: tuple[tuple[str, str], ...],
+    error: InputError | None,
+) -> tuple[FieldShown, ...]:
+    blame = "" if error is None or missing_words(error) else _blamed(error)
+    out = []
+    for name, more in part.fields(state.choices):
+        if name in words.STEP_FIELDS:
+            shown = words.step_field(name, state, found)
+            against = words.error_words(error) if error and blame == words.STEP_FIELDS[name] else ""
+            out.append(shown if shown.problem else replace(shown, problem=against))
+            continue
+        against = words.error_words(error) if error and blame == name else ""
+        absent = words.absent_words(name, found)
+        shown = field_shown(
+            name, state.choices, state.typed, columns, absent=absent, problem=against
+        )
+        out.append(replace(shown, place="more" if more else "main"))
+    if part.name == "save":
+        out += words.save_fields(state)
+    return tuple(out)
+
+
+def _words(
+    part: Part, state: State, found: Resolved, error: InputError | None, blamed: bool
+) -> str:
+    """Say in a few words how far a part is."""
+    if any(name in state.typed for name, _ in part.fields(state.choices)):
+        return "can't read a field, see below"
+    if error is not None:
+        return missing_words(error) or ("can't be used, see below" if blamed else "")
+    if part.stages[-1] in found.values:
+        return words.done_words(part.name, state, found)
+    pending = {p.stage for p in found.pending}
+    if pending & set(part.stages):
+        if state.progress is not None:
+            return "under way"
+        return "stopped" if state.stopped else "ready"
+    return part.waits_for or "needs: a log"
+
+
+def _blamed(error: InputError) -> str:
+    """The field that an error names: ``[circuit] counts.bits`` is ``circuit.counts.bits``."""
+    found = re.search(r"\[(\w+)\] ([\w.]+)$", error.where)
+    return f"{found[1]}.{found[2]}" if found else ""
+
+
+def _status(state: State, found: Resolved) -> Status:
+    if state.notice:
+        return Status(state.notice, "problem")
+    if state.progress is not None:
+        return Status(state.progress.words.capitalize(), "busy")
+    if state.saved:
+        return Status(state.saved)
+    if "result" in found.values and state.answer is not None:
+        return Status(state.answer.shown.headline)
+    for part in PARTS:
+        error = next((found.errors[s] for s in part.stages if s in found.errors), None)
+        if error is not None:
+            need = missing_words(error)
+            if need:
+                return Status(f"{part.title}: {need}")
+            return Status(f"{part.title}: {words.error_words(error)}", "problem")
+    if state.stopped:
+        return Status("Stopped. Fit starts it again.")
+    return Status(Path(state.choices.log.file or "").name)

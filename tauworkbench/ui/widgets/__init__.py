@@ -1,0 +1,1 @@
+"""The page itself: the only ipywidgets of the package."""

@@ -1,0 +1,57 @@
+"""Callbacks that lose no error: what goes wrong is shown in words and kept."""
+
+from __future__ import annotations
+
+import traceback
+from collections.abc import Callable
+from typing import Any
+
+__all__ = ["Guard"]
+
+
+class Guard:
+    """Wraps every callback of the page.
+
+    In a notebook an exception in a callback is seen by nobody. Here it comes to ``on_error`` as
+    one line, and the traceback is kept in ``errors``, for a bug report and for tests.
+
+    Parameters
+    ----------
+    on_error : callable
+        ``on_error(words)``.
+    """
+
+    def __init__(self, on_error: Callable[[str], None]) -> None:
+        self.errors: list[str] = []
+        self._on_error = on_error
+        self._quiet = 0
+
+    def __call__(self, function: Callable[..., Any]) -> Callable[..., None]:
+        """Return the function guarded; while the page is being set it isn't called at all."""
+
+        def guarded(*args: Any, **kwargs: Any) -> None:
+            if self._quiet:
+                return
+            try:
+                function(*args, **kwargs)
+            except Exception as e:  # noqa: BLE001 - a callback has no caller who could care
+                self.keep(e)
+
+        return guarded
+
+    def keep(self, error: Exception) -> None:
+        """Keep an error's traceback and say it on the page."""
+        self.errors.append("".join(traceback.format_exception(error)))
+        what = " ".join(str(error).split())[:200]
+        self._on_error(
+            f"Something went wrong inside the program ({type(error).__name__}: {what}). Your "
+            "choices are kept; go on, or save the run file. The details are in bench.errors."
+        )
+
+    def __enter__(self) -> None:
+        """Begin to set the page quietly."""
+        self._quiet += 1
+
+    def __exit__(self, *_: object) -> None:
+        """End it."""
+        self._quiet -= 1
