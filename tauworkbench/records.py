@@ -101,6 +101,9 @@ class Trace:
         One converter code, as a temperature [K].
     used : array_like of bool, shape (n,), optional
         False where a sample was set aside; such a sample is kept to be shown.
+    impossible : array_like of bool, shape (n,), optional
+        True where the circuit can't have given the signal, a converter's rail included; such a
+        sample isn't used. None: not known.
     columns : mapping of str to ndarray, optional
         Further logged columns that a later stage needs (an onset marker, a speed).
     effects : tuple of Effect
@@ -125,6 +128,7 @@ class Trace:
     reference_c: FloatArray | None = None
     quantum_k: FloatArray | None = None
     used: BoolArray | None = None
+    impossible: BoolArray | None = None
     columns: Mapping[str, FloatArray] = field(default_factory=lambda: _NO_COLUMNS)
     effects: tuple[Effect, ...] = ()
     reader: Reader = field(default_factory=Reader)
@@ -145,9 +149,12 @@ class Trace:
         for name in ("temperature_c", "sigma_k", "signal", "power_w", "reference_c", "quantum_k"):
             value = getattr(self, name)
             put(self, name, None if value is None else _array(name, value, n))
-        used = np.ones(n, bool) if self.used is None else np.array(self.used, bool)
-        if used.shape != (n,):
-            raise InputError("used", f"has shape {used.shape}", f"give {n} values")
+        used = np.ones(n, bool) if self.used is None else _mask("used", self.used, n)
+        if self.impossible is not None:
+            impossible = _mask("impossible", self.impossible, n)
+            used &= ~impossible
+            impossible.setflags(write=False)
+            put(self, "impossible", impossible)
         bad = used & ~np.isfinite(self.temperature_c)
         used &= ~bad
         used.setflags(write=False)
@@ -283,6 +290,14 @@ class Budget:
     on: str
     lines: tuple[BudgetLine, ...]
     combined: Combined
+
+
+def _mask(name: str, value: Any, n: int) -> BoolArray:
+    """Own copy of a mask of the right length."""
+    out = np.array(value, bool)
+    if out.shape != (n,):
+        raise InputError(name, f"has shape {out.shape}", f"give {n} values")
+    return out
 
 
 def _array(name: str, value: Any, n: int | None) -> FloatArray:
