@@ -1,1 +1,5 @@
-"""The command line: arguments to choices, choices to a summary."""
+"""The command line: arguments -> choices -> complete -> report."""
+
+from .main import main
+
+__all__ = ["main"]

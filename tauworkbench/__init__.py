@@ -1,0 +1,81 @@
+"""tauworkbench: how fast a temperature sensor follows, with uncertainties that you can sign.
+
+The public names load on first use (PEP 562): importing the package costs next to nothing.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+from .errors import __version__
+
+if TYPE_CHECKING:
+    from .circuits import Bridge as Bridge
+    from .circuits import Counts as Counts
+    from .circuits import CurrentSource as CurrentSource
+    from .circuits import Divider as Divider
+    from .circuits import Ohms as Ohms
+    from .circuits import Thermometer as Thermometer
+    from .errors import Cancelled as Cancelled
+    from .errors import CautionWarning as CautionWarning
+    from .errors import EstimateError as EstimateError
+    from .errors import InputError as InputError
+    from .estimate.fit import fit_step as fit_step
+    from .laws import Beta as Beta
+    from .laws import FourTerm as FourTerm
+    from .laws import Platinum as Platinum
+    from .laws import SteinhartHart as SteinhartHart
+    from .laws import Table as Table
+    from .laws import ThreeParameter as ThreeParameter
+    from .records import Trace as Trace
+    from .sensor import to_temperature as to_temperature
+    from .session.run import fit as fit
+    from .session.run import read_run as read_run
+    from .session.run import to_trace as to_trace
+    from .thermal.transfer import TransferFunction as TransferFunction
+    from .ui import Workbench as Workbench
+
+_ROOM_OF = {
+    "Beta": "laws",
+    "Bridge": "circuits",
+    "Cancelled": "errors",
+    "CautionWarning": "errors",
+    "Counts": "circuits",
+    "CurrentSource": "circuits",
+    "Divider": "circuits",
+    "EstimateError": "errors",
+    "FourTerm": "laws",
+    "InputError": "errors",
+    "Ohms": "circuits",
+    "Platinum": "laws",
+    "SteinhartHart": "laws",
+    "Table": "laws",
+    "Thermometer": "circuits",
+    "ThreeParameter": "laws",
+    "Trace": "records",
+    "TransferFunction": "thermal.transfer",
+    "Workbench": "ui",
+    "fit": "session.run",
+    "fit_step": "estimate.fit",
+    "read_run": "session.run",
+    "to_temperature": "sensor",
+    "to_trace": "session.run",
+}
+
+__all__ = [  # noqa: PLE0604 - the names above, said once
+    "__version__",
+    *_ROOM_OF,
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _ROOM_OF:
+        raise AttributeError(f"module {__name__!r} has no attribute {name!r}")
+    value = getattr(import_module(f".{_ROOM_OF[name]}", __name__), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *_ROOM_OF})

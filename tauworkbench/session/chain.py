@@ -1,0 +1,166 @@
+"""The table of stages, and what each does: ``log -> channels -> trace -> steps -> estimates``.
+
+Each function reads only its own slice of the choices and hands on a frozen record. Log, channels
+and trace are in `measuring`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import replace
+from pathlib import Path
+from typing import Any
+
+from ..errors import InputError
+from ..progress import Watch
+from ..records import Step
+from ..result import QUANTITY, Provenance, RunInfo
+from . import measuring
+from .checks import check
+from .choices import Choices
+from .marker import Onset, marker_onset
+from .memory import Stage
+from .saved import RunResult
+
+__all__ = ["STAGES"]
+
+_LARGE_BYTES = 20_000_000  # a log above this takes a second or more to read
+_FITTED = ("plunge", "air-step")
+_CONDITIONS = (
+    "immersion_mm",
+    "medium_c",
+    "mounting",
+    "pressure_pa",
+    "operator",
+    "note",
+    "ambient_c",
+    "rated_power_mw",
+)
+
+
+def _onset(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> Onset:
+    test = choices.test
+    check(choices, ("onset",))
+    if test.onset is not None:
+        channels = inputs["channels"]
+        return marker_onset(channels.time_s, channels.values["marker"], test.onset, test.window_s)
+    if test.onset_s is None:
+        return Onset()
+    return Onset(test.onset_s, 0.0, "before" if test.onset_s == "before" else "given")
+
+
+def _steps(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> tuple[Step, ...]:
+    from ..steps.find import find_steps
+
+    known, window = inputs["onset"].time_s, choices.test.window_s
+    return find_steps(inputs["trace"], onset=known, window_s=window)
+
+
+def _estimates(choices: Choices, inputs: Mapping[str, Any], watch: Watch) -> tuple[Any, ...]:
+    check(choices, ("test", "model"))
+    test, model, onset = choices.test, choices.model, inputs["onset"]
+    if test.kind not in _FITTED:
+        how = f"the kinds that can be fitted are {', '.join(_FITTED)}"
+        if test.kind == "field":
+            how = "a field log has no step to fit; give the log of a plunge or an air step"
+        raise InputError("[test] kind", f'"{test.kind}" has no step response to fit', how)
+    from ..estimate.fit import FitSettings, fit_steps
+
+    settings = FitSettings(
+        order=model.order,
+        zero=model.zero,
+        dead_time=model.dead_time,
+        drift=model.drift,
+        input=model.input,
+        noise=model.noise,
+        coverage=model.coverage,
+        onset_s=onset.time_s,
+        onset_u_s=onset.standard_uncertainty_s,
+        window_s=test.window_s,
+        steps=test.steps,
+        transfer_s=test.transfer_s or 0.0,
+    )
+    estimates = fit_steps(inputs["trace"], settings, watch, inputs["steps"])
+    if onset.kind != "marker":
+        return estimates
+    return tuple(
+        replace(
+            e,
+            step=replace(e.step, onset="marker"),
+            cautions=tuple(dict.fromkeys((*e.cautions, *onset.cautions))),
+        )
+        for e in estimates
+    )
+
+
+def _result(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> RunResult:
+    test, log = choices.test, inputs["log"]
+    conditions = {k: v for k in _CONDITIONS if (v := getattr(test, k)) is not None}
+    kind = test.kind or ""
+    return RunResult(
+        run=RunInfo(
+            name=choices.name,
+            test=kind,
+            quantity=QUANTITY[kind],
+            sensor=test.sensor,
+            medium=test.medium,
+            speed_m_s=test.speed_m_s,
+            conditions=conditions,
+        ),
+        trace=inputs["trace"],
+        estimates=inputs["estimates"],
+        provenance=Provenance(
+            log_sha256=log.sha256,
+            time_origin=inputs["channels"].time_origin,
+            settings=choices.to_dict(),
+            log_file=choices.log.file or "",
+        ),
+    )
+
+
+def _log_file(choices: Choices) -> tuple[Path, ...]:
+    return () if choices.log.file is None else (choices.path(choices.log.file),)
+
+
+def _is_large(choices: Choices) -> bool:
+    try:
+        return any(path.stat().st_size > _LARGE_BYTES for path in _log_file(choices))
+    except (OSError, ValueError):
+        return False
+
+
+_ELECTRICAL = ("circuit", "law", "reference")
+_ONSET = ("test.onset_s", "test.onset", "test.window_s")
+STAGES: tuple[Stage, ...] = (
+    Stage(
+        "log", (), ("log.file", "log.object", "log.read"), measuring.log,
+        files=_log_file, costly=_is_large,
+    ),
+    Stage(
+        "channels", ("log",),
+        ("log.time", "log.signal", "log.units", "circuit.supply", "circuit.current",
+         "circuit.counts", "circuit.kind", "reference.column", "reference.unit", "test.onset",
+         "recover.speed"),
+        measuring.channels,
+        files=_log_file,
+    ),
+    Stage("law", (), ("law", "circuit.kind"), measuring.law, files=measuring.law_files),
+    Stage(
+        "trace", ("channels", "law"),
+        (*_ELECTRICAL, "log.noise_u", "log.averaging_s", "log.filter_s"),
+        measuring.trace,
+    ),
+    Stage("onset", ("channels",), _ONSET, _onset),
+    Stage("steps", ("trace", "onset"), _ONSET, _steps),
+    Stage(
+        "estimates", ("trace", "onset", "steps"), ("test.kind", "test.window_s", "test.steps",
+         "test.transfer_s", "test.onset_s", "test.onset", "model", "reference.column"),
+        _estimates,
+        costly=lambda _: True,
+    ),
+    Stage(
+        "result", ("log", "channels", "trace", "estimates"),
+        ("log", "reference", "circuit", "law", "test", "model", "recover"),
+        _result,
+    ),
+)  # fmt: skip
