@@ -15,7 +15,7 @@ import numpy as np
 from ..progress import SILENT, Watch, step
 from ..records import FloatArray
 
-__all__ = ["Separable", "Solution", "project", "solve", "solve_separable"]
+__all__ = ["Separable", "Solution", "project", "solve", "solve_separable", "trust_region"]
 
 Model = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
 Bounds = tuple[Sequence[float] | FloatArray, Sequence[float] | FloatArray]
@@ -123,6 +123,24 @@ def solve(
         else:
             damping *= 7
     return Solution(values, residual, jacobian, cost, converged, count)
+
+
+def trust_region(model: Model, start: Sequence[float] | FloatArray) -> Solution:
+    """`solve` by scipy's trust-region search: slower, and safer from a start that is far off."""
+    from scipy.optimize import least_squares
+
+    found = least_squares(
+        lambda x: model(x)[0],
+        np.asarray(start, float),
+        jac=lambda x: model(x)[1],
+        x_scale="jac",
+        ftol=1e-15,
+        xtol=1e-15,
+        gtol=1e-15,
+        max_nfev=10_000,
+    )
+    cost = float(2 * found.cost)
+    return Solution(found.x, found.fun, found.jac, cost, found.status > 0, int(found.nfev))
 
 
 def _free(

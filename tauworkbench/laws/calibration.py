@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from ..errors import InputError
-from ..fitting.least_squares import solve
+from ..fitting.least_squares import trust_region
 from ..records import FloatArray
 from .base import KELVIN, Law
 from .platinum import Platinum
@@ -78,8 +78,6 @@ def calibrate(
     kind: type[Law],
     temperature_c: ArrayLike,
     resistance_ohm: ArrayLike,
-    *,
-    start: Law | None = None,
 ) -> Calibrated:
     """Fit a law to calibration points by least squares in temperature.
 
@@ -89,8 +87,6 @@ def calibrate(
         One of the law classes.
     temperature_c, resistance_ohm : array_like, shape (n,)
         [degC], [ohm]; with as many points as the law has coefficients it goes through them.
-    start : Law, optional
-        Where to begin; found from the points when absent, which is as good.
 
     Raises
     ------
@@ -109,8 +105,8 @@ def calibrate(
             f"give at least {need} points",
         )
     try:
-        return _fitted(start or _STARTS[kind](t, r), t, r)
-    except (InputError, np.linalg.LinAlgError, FloatingPointError) as error:
+        return _fitted(_STARTS[kind](t, r), t, r)
+    except (ValueError, np.linalg.LinAlgError, FloatingPointError) as error:
         raise InputError(
             "[law] points", f"no such law goes through these points ({error})", "check the points"
         ) from error
@@ -136,7 +132,7 @@ def _fitted(first: Law, t: FloatArray, r: FloatArray) -> Calibrated:
             return np.full(t.size, np.inf), np.full((t.size, values.size), np.nan)
         return law.celsius_at(r) - t, law.gradient(r).T * scale
 
-    found = solve(model, start / scale, tolerance=1e-14)
+    found = trust_region(model, start / scale)
     law = law_of(found.values)
     free = t.size - start.size
     covariance = np.zeros((start.size, start.size))
