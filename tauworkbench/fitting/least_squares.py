@@ -140,7 +140,8 @@ def trust_region(model: Model, start: Sequence[float] | FloatArray) -> Solution:
         max_nfev=10_000,
     )
     cost = float(2 * found.cost)
-    return Solution(found.x, found.fun, found.jac, cost, found.status > 0, int(found.nfev))
+    values, residual, jacobian = (np.asarray(x) for x in (found.x, found.fun, found.jac))
+    return Solution(values, residual, jacobian, cost, found.status > 0, int(found.nfev))
 
 
 def _free(
