@@ -1,0 +1,252 @@
+"""From a logged signal to the sensor's own temperature, with what is uncertain about it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any, Protocol
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from .circuits import Circuit, Readings
+from .errors import InputError
+from .noise import resolution, sample_noise
+from .records import BoolArray, Effect, FloatArray, Reader, Trace
+
+__all__ = ["ResistanceLaw", "to_temperature"]
+
+_MOST_IMPOSSIBLE = 0.01
+_NO_READER = Reader()
+
+
+class ResistanceLaw(Protocol):
+    """What this room asks of a law."""
+
+    @property
+    def valid_c(self) -> tuple[float, float] | None:
+        """Where it holds [degC]."""
+
+    def celsius_at(self, resistance_ohm: FloatArray, /) -> FloatArray:
+        """Temperature [degC] at a resistance [ohm]."""
+
+    def slope_k_per_ohm(self, resistance_ohm: FloatArray, /) -> FloatArray:
+        """Slope dT/dR [K/ohm] at a resistance."""
+
+    def effects_k(self, resistance_ohm: FloatArray, /) -> tuple[tuple[str, FloatArray], ...]:
+        """Source and temperature change [K] for one standard uncertainty of each own input."""
+
+
+class _AsLogged:
+    """The law of a signal that is a temperature already."""
+
+    valid_c = None
+
+    def celsius_at(self, value: FloatArray) -> FloatArray:
+        return value
+
+    def slope_k_per_ohm(self, value: FloatArray) -> FloatArray:
+        return np.ones_like(value)
+
+    def effects_k(self, _value: FloatArray) -> tuple[tuple[str, FloatArray], ...]:
+        return ()
+
+
+def to_temperature(  # noqa: PLR0913 - a log, what it was logged with, and what goes along
+    time_s: ArrayLike,
+    signal: ArrayLike,
+    *,
+    circuit: Circuit,
+    law: ResistanceLaw | None = None,
+    noise_u: float | None = None,
+    reference_c: ArrayLike | None = None,
+    columns: Mapping[str, ArrayLike] | None = None,
+    reader: Reader = _NO_READER,
+    rows: ArrayLike | None = None,
+    cautions: tuple[str, ...] = (),
+) -> Trace:
+    """Apply circuit and law to a logged signal.
+
+    Parameters
+    ----------
+    time_s : array_like, shape (n,)
+        Increasing [s].
+    signal : array_like, shape (n,)
+        In ``circuit.signal_unit``; NaN where a value is missing.
+    circuit : Circuit
+        How the sensor's ohms became the signal.
+    law : Law, optional
+        Ohms to degC; left out where the circuit is a `Thermometer`.
+    noise_u : float, optional
+        One sample's standard uncertainty, in the signal's unit; else found from the record, level
+        by level (`noise.sample_noise`).
+    reference_c : array_like, shape (n,), optional
+        The medium by a faster thermometer [degC].
+    columns : mapping of str to array_like, optional
+        Further columns, to be carried along.
+    reader : Reader
+        Averaging, filter and reference lag of the instruments, carried along to the models.
+    rows : array_like of int, shape (n,), optional
+        The samples' row numbers in their file, for the cautions.
+    cautions : tuple of str
+        Those of earlier stages; this one's come after them.
+
+    Returns
+    -------
+    Trace
+        ``sigma_k`` is the noise alone, to first order in the slopes of circuit and law; what
+        tolerances do is in ``effects``. Impossible samples have no temperature and aren't used.
+
+    Raises
+    ------
+    InputError
+        Where lengths differ, the law is missing or one too many, or ``noise_u`` isn't positive.
+    """
+    time, y = _row("time_s", time_s), _row("signal", signal)
+    if y.size != time.size:
+        raise InputError("signal", f"has {y.size} values for {time.size} times", "give one each")
+    applied = _law(circuit, law)
+    got = circuit.readings(y)
+    slope = got.slope * applied.slope_k_per_ohm(got.value)
+    celsius = applied.celsius_at(got.value)
+    quantum = circuit.quantum if circuit.quantum is not None else resolution(y)
+    sigma = _sigma(time, y, circuit, got, noise_u, quantum)
+    return Trace(
+        time_s=time,
+        temperature_c=celsius,
+        sigma_k=None if sigma is None else np.abs(slope) * sigma,
+        signal=y,
+        signal_unit=circuit.signal_unit,
+        power_w=got.power_w,
+        reference_c=None if reference_c is None else _row("reference_c", reference_c),
+        quantum_k=None if quantum is None else np.abs(slope) * quantum,
+        used=np.isfinite(celsius),
+        impossible=got.impossible,
+        columns={k: _row(k, v) for k, v in (columns or {}).items()},
+        effects=_effects(y, circuit, applied, got),
+        reader=reader,
+        cautions=(
+            *cautions,
+            *_set_aside(time, y, circuit, got, celsius, _rows(rows, y.size)),
+            *_out_of_range(celsius, applied.valid_c),
+        ),
+    )
+
+
+def _row(name: str, values: ArrayLike) -> FloatArray:
+    try:
+        out = np.array(values, float)
+    except (TypeError, ValueError):
+        raise InputError(name, "holds something that is no number", "give numbers") from None
+    if out.ndim != 1:
+        raise InputError(name, f"has shape {out.shape}", "give one row of numbers")
+    return out
+
+
+def _rows(rows: ArrayLike | None, n: int) -> np.ndarray[Any, np.dtype[np.int64]] | None:
+    if rows is None:
+        return None
+    out = np.asarray(rows, np.int64)
+    if out.shape != (n,):
+        raise InputError("rows", f"has shape {out.shape}", f"give {n} row numbers")
+    return out
+
+
+def _law(circuit: Circuit, law: ResistanceLaw | None) -> ResistanceLaw:
+    if circuit.gives == "degC":
+        if law is not None:
+            what = "a thermometer's signal is a temperature and needs no law"
+            raise InputError("law", what, "leave it out, or change the circuit")
+        return _AsLogged()
+    if law is None:
+        raise InputError("law", "is missing", "give the sensor's resistance law, such as Beta(...)")
+    return law
+
+
+def _sigma(
+    time: FloatArray,
+    y: FloatArray,
+    circuit: Circuit,
+    got: Readings,
+    noise_u: float | None,
+    quantum: float | None,
+) -> FloatArray | None:
+    """Standard uncertainty of each sample, in the signal's unit."""
+    if noise_u is not None:
+        if not (np.isfinite(noise_u) and noise_u > 0):
+            raise InputError("noise_u", f"{noise_u!r} can't stand there", "give a number above 0")
+        return np.full(y.size, float(noise_u))
+    excitation = circuit.excitation
+    known = np.where(np.isfinite(got.value), y, np.nan)
+    by = excitation if np.ndim(excitation) else None  # type: ignore[arg-type]
+    found = sample_noise(time, known, quantum=quantum, excitation=by)
+    return found if np.any(found > 0) else None
+
+
+def _effects(
+    y: FloatArray, circuit: Circuit, law: ResistanceLaw, got: Readings
+) -> tuple[Effect, ...]:
+    """What one standard uncertainty of each tolerance does; none for what cancels."""
+    out = []
+    for source, up, down in circuit.tolerances():
+        shift = (up.readings(y).value - down.readings(y).value) / 2.0
+        if np.nanmax(np.abs(shift / got.value), initial=0.0) > 1e-12:
+            out.append(Effect(source, shift * law.slope_k_per_ohm(got.value)))
+    out += [Effect(source, shift) for source, shift in law.effects_k(got.value)]
+    return tuple(out)
+
+
+def _set_aside(
+    time: FloatArray,
+    y: FloatArray,
+    circuit: Circuit,
+    got: Readings,
+    celsius: FloatArray,
+    rows: np.ndarray[Any, np.dtype[np.int64]] | None,
+) -> list[str]:
+    """Cautions for the samples that have no temperature, by reason."""
+    unit = circuit.signal_unit
+    out = [_count(f.where, f.words, time, y, unit, rows) for f in got.faults]
+    share = float(np.mean(got.impossible)) if y.size else 0.0
+    if share > _MOST_IMPOSSIBLE:
+        out.append(
+            f"{share:.2%} of all samples are impossible for this circuit; more than 1 % in a "
+            "window can't be fitted: check the circuit's values, the unit and the wiring"
+        )
+    missing = np.isnan(got.value) & ~got.impossible
+    if missing.any():
+        out.append(_count(missing, "a value is missing", time, y, unit, rows))
+    lawless = ~np.isfinite(celsius) & np.isfinite(got.value)
+    if lawless.any():
+        words = "the law gives no temperature at their resistance"
+        out.append(_count(lawless, words, time, y, unit, rows))
+    return out
+
+
+def _count(
+    where: BoolArray,
+    words: str,
+    time: FloatArray,
+    y: FloatArray,
+    unit: str,
+    rows: np.ndarray[Any, np.dtype[np.int64]] | None,
+) -> str:
+    n, i = int(where.sum()), int(np.argmax(where))
+    place = f"row {rows[i]}, {time[i]:.6g} s" if rows is not None else f"{time[i]:.6g} s"
+    subject = "1 sample was" if n == 1 else f"{n} samples were"
+    return f"{subject} set aside: {words}; the first at {place}: {y[i]:.6g} {unit}"
+
+
+def _out_of_range(celsius: FloatArray, valid_c: tuple[float, float] | None) -> list[str]:
+    if valid_c is None:
+        return []
+    low, high = valid_c
+    with np.errstate(invalid="ignore"):
+        beyond = (celsius < low) | (celsius > high)
+    if not beyond.any():
+        return []
+    found = celsius[beyond]
+    words = (
+        f"the law is stated for {low:.6g} to {high:.6g} degC, but {int(beyond.sum())} samples lie "
+        f"outside, between {found.min():.6g} and {found.max():.6g} degC; use a law that covers them"
+    )
+    return [words]
