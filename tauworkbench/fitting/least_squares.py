@@ -129,10 +129,16 @@ def trust_region(model: Model, start: Sequence[float] | FloatArray) -> Solution:
     """`solve` by scipy's trust-region search: slower, and safer from a start that is far off."""
     from scipy.optimize import least_squares
 
+    def residuals(values: FloatArray) -> FloatArray:
+        return model(values)[0]
+
+    def slopes(values: FloatArray) -> FloatArray:
+        return model(values)[1]
+
     found = least_squares(
-        lambda x: model(x)[0],
+        residuals,
         np.asarray(start, float),
-        jac=lambda x: model(x)[1],
+        jac=slopes,
         x_scale="jac",
         ftol=1e-15,
         xtol=1e-15,
