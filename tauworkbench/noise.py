@@ -21,7 +21,7 @@ from scipy.special import chdtri
 
 from .records import FloatArray
 
-__all__ = ["resolution", "sample_noise"]
+__all__ = ["excitation_levels", "resolution", "sample_noise"]
 
 _MOST = 100_000  # residuals looked at: the scale is then known to 0.4 %
 _BINS = 8
@@ -32,7 +32,7 @@ _SCATTER = 1.25  # standard deviation of ln(scale) times the root of the residua
 _CHANCE = 1e-4  # of seeing levels of unequal noise where there are none
 _WORTH = 1.25  # a ratio of largest to smallest noise below this isn't worth weights
 _SAME_EXCITATION = math.log(1.1)
-_MOST_EXCITATIONS = 20
+_ONE_LEVEL = 24  # samples
 
 
 def sample_noise(
@@ -64,23 +64,36 @@ def sample_noise(
         Correlated noise and tolerances are *not* in it.
     """
     time, y = np.asarray(time_s, float), np.asarray(signal, float)
-    good = np.flatnonzero(np.isfinite(y))
     out = np.full(y.shape, np.nan)
+    good = np.flatnonzero(np.isfinite(y))
+    time, y = time[good], y[good]
     group = np.zeros(good.size, int)
     if excitation is not None:
-        group = _groups(np.broadcast_to(np.asarray(excitation, float), y.shape)[good])
+        group = _groups(np.broadcast_to(np.asarray(excitation, float), out.shape)[good])
     noise = np.full(good.size, np.nan)
-    for each in np.unique(group):
+    for each in range(int(group.max(initial=0)) + 1):
         inside = group == each
         starts = np.flatnonzero(inside[:-3] & inside[1:-2] & inside[2:-1] & inside[3:])
         if starts.size >= min(_FEW, good.size - 3):
-            noise[inside] = _by_level(time[good], y[good], starts, y[good][inside], quantum)
+            noise[inside] = _by_level(time, y, starts, y[inside], quantum)
     known = np.isfinite(noise)
     if known.any():
         noise[~known] = np.median(noise[known])
         floor = 0.0 if not quantum else quantum / math.sqrt(12.0)
-        rounding = 2.0 * np.finfo(float).eps * float(np.max(np.abs(y[good])))
+        rounding = 2.0 * np.finfo(float).eps * float(np.max(np.abs(y)))
         out[good] = np.maximum(noise, max(floor, rounding))
+    return out
+
+
+def excitation_levels(excitation: ArrayLike) -> FloatArray:
+    """Return each sample's level of excitation, shape (n,): the median over its own level."""
+    values = np.asarray(excitation, float)
+    group = _groups(values)
+    out = np.empty(values.shape)
+    for each in range(int(group.max(initial=0)) + 1):
+        inside = group == each
+        if inside.any():
+            out[inside] = np.nanmedian(values[inside])
     return out
 
 
@@ -205,7 +218,10 @@ def _groups(excitation: FloatArray) -> np.ndarray:
     with np.errstate(divide="ignore", invalid="ignore"):
         size = np.log(np.abs(excitation))
     known = np.sort(size[np.isfinite(size)])
-    cuts = np.flatnonzero(np.diff(known) > _SAME_EXCITATION)
-    if not 1 <= cuts.size < _MOST_EXCITATIONS:
-        return np.zeros(excitation.size, int)
-    return np.searchsorted((known[cuts] + known[cuts + 1]) / 2.0, size)
+    cuts, last = [], 0
+    for cut in (np.flatnonzero(np.diff(known) > _SAME_EXCITATION) + 1).tolist():
+        # A few strays, between two levels or near zero, make no level of their own.
+        if cut - last >= _ONE_LEVEL and known.size - cut >= _ONE_LEVEL:
+            cuts.append((known[cut - 1] + known[cut]) / 2.0)
+            last = cut
+    return np.searchsorted(np.array(cuts), size)

@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike
 
 from .circuits import Circuit, Readings
 from .errors import InputError
-from .noise import resolution, sample_noise
+from .noise import excitation_levels, resolution, sample_noise
 from .records import BoolArray, Effect, FloatArray, Reader, Trace
 
 __all__ = ["ResistanceLaw", "to_temperature"]
@@ -106,23 +106,24 @@ def to_temperature(  # noqa: PLR0913 - a log, what it was logged with, and what 
         raise InputError("signal", f"has {y.size} values for {time.size} times", "give one each")
     applied = _law(circuit, law)
     got = circuit.readings(y)
-    slope = got.slope * applied.slope_k_per_ohm(got.value)
+    law_slope = applied.slope_k_per_ohm(got.value)
+    slope = np.abs(got.slope * law_slope)
     celsius = applied.celsius_at(got.value)
     quantum = circuit.quantum if circuit.quantum is not None else resolution(y)
     sigma = _sigma(time, y, circuit, got, noise_u, quantum)
     return Trace(
         time_s=time,
         temperature_c=celsius,
-        sigma_k=None if sigma is None else np.abs(slope) * sigma,
+        sigma_k=None if sigma is None else slope * sigma,
         signal=y,
         signal_unit=circuit.signal_unit,
         power_w=got.power_w,
         reference_c=None if reference_c is None else _row("reference_c", reference_c),
-        quantum_k=None if quantum is None else np.abs(slope) * quantum,
+        quantum_k=None if quantum is None else slope * quantum,
         used=np.isfinite(celsius),
         impossible=got.impossible,
         columns={k: _row(k, v) for k, v in (columns or {}).items()},
-        effects=_effects(y, circuit, applied, got),
+        effects=_effects(y, circuit, applied, got.value, law_slope),
         reader=reader,
         cautions=(
             *cautions,
@@ -175,24 +176,21 @@ def _sigma(
         if not (np.isfinite(noise_u) and noise_u > 0):
             raise InputError("noise_u", f"{noise_u!r} can't stand there", "give a number above 0")
         return np.full(y.size, float(noise_u))
-    excitation = circuit.excitation
-    known = np.where(np.isfinite(got.value), y, np.nan)
-    by = excitation if np.ndim(excitation) else None  # type: ignore[arg-type]
-    found = sample_noise(time, known, quantum=quantum, excitation=by)
+    known, levels = np.where(np.isfinite(got.value), y, np.nan), None
+    if isinstance(circuit.excitation, np.ndarray):
+        # What the logged supply or current explains is no noise; what it adds is.
+        levels = excitation_levels(circuit.excitation)
+        known = circuit.steady(got.value, levels)
+    found = sample_noise(time, known, quantum=quantum, excitation=levels)
     return found if np.any(found > 0) else None
 
 
 def _effects(
-    y: FloatArray, circuit: Circuit, law: ResistanceLaw, got: Readings
+    y: FloatArray, circuit: Circuit, law: ResistanceLaw, value: FloatArray, law_slope: FloatArray
 ) -> tuple[Effect, ...]:
-    """What one standard uncertainty of each tolerance does; none for what cancels."""
-    out = []
-    for source, up, down in circuit.tolerances():
-        shift = (up.readings(y).value - down.readings(y).value) / 2.0
-        if np.nanmax(np.abs(shift / got.value), initial=0.0) > 1e-12:
-            out.append(Effect(source, shift * law.slope_k_per_ohm(got.value)))
-    out += [Effect(source, shift) for source, shift in law.effects_k(got.value)]
-    return tuple(out)
+    """What one standard uncertainty of each tolerance does to the temperature."""
+    circuits = ((source, shift * law_slope) for source, shift in circuit.shifts(y))
+    return tuple(Effect(source, k) for source, k in (*circuits, *law.effects_k(value)))
 
 
 def _set_aside(

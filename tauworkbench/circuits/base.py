@@ -4,14 +4,14 @@ from __future__ import annotations
 
 from abc import ABC, abstractmethod
 from dataclasses import dataclass
-from typing import ClassVar, NamedTuple, Self
+from typing import ClassVar, NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from ..records import BoolArray, FloatArray
 
-__all__ = ["Circuit", "Fault", "Numbers", "Readings"]
+__all__ = ["Circuit", "Fault", "Numbers", "Readings", "each_once"]
 
 Numbers = float | FloatArray
 
@@ -85,6 +85,25 @@ class Circuit(ABC):
     def signal(self, value: ArrayLike) -> FloatArray:
         """Return the signal at these ohms (or degC), shape (n,); codes aren't rounded."""
 
-    def tolerances(self) -> tuple[tuple[str, Self, Self], ...]:
-        """Return (source, circuit one standard uncertainty up, down) for each tolerance given."""
+    def shifts(self, signal: ArrayLike) -> tuple[tuple[str, FloatArray], ...]:  # noqa: ARG002
+        """Return (source, change of value) for plus one standard uncertainty of each tolerance.
+
+        Each change has shape (n,). Tolerances that weren't stated, or cancel, are left out.
+        """
         return ()
+
+    def steady(self, value: FloatArray, excitation: FloatArray) -> FloatArray:  # noqa: ARG002
+        """Return the signal at these ohms (or degC) had the excitation been this, shape (n,)."""
+        return self.signal(value)
+
+
+def each_once(faults: list[Fault]) -> tuple[Fault, ...]:
+    """Keep a sample under the first reason that it meets, and only reasons that some sample has."""
+    out: list[Fault] = []
+    for words, where in faults:
+        new = where.copy()
+        for earlier in out:
+            new &= ~earlier.where
+        if new.any():
+            out.append(Fault(words, new))
+    return tuple(out)

@@ -7,7 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..errors import InputError
-from ..records import BoolArray, FloatArray
+from ..records import FloatArray
+from .base import Numbers
 from .checks import number, word
 
 __all__ = ["Counts"]
@@ -67,19 +68,19 @@ class Counts:
     def _offset(self) -> float:
         return 0.5 if self.edge == "floor" else 0.0
 
-    def volts_per_code(self, supply: float | FloatArray) -> float | FloatArray:
+    def volts_per_code(self, supply: Numbers) -> Numbers:
         """Return the size of one code [V]; supply [V] counts only where it is the reference."""
         return (supply if self.ratiometric else float(self.reference)) / self.span
 
-    def volts(self, codes: FloatArray, supply: float | FloatArray) -> FloatArray:
+    def volts(self, codes: Numbers, supply: Numbers) -> Numbers:
         """Return the voltage in the middle of each code [V]."""
         return (codes + self._offset) * self.volts_per_code(supply)
 
-    def exact(self, volts: FloatArray, supply: float | FloatArray) -> FloatArray:
+    def exact(self, volts: FloatArray, supply: Numbers) -> FloatArray:
         """Return codes before rounding, the exact inverse of `volts`."""
         return volts / self.volts_per_code(supply) - self._offset
 
-    def codes(self, volts: FloatArray, supply: float | FloatArray = np.nan) -> FloatArray:
+    def codes(self, volts: FloatArray, supply: Numbers = np.nan) -> FloatArray:
         """Return the whole codes that this converter would log, clipped at its rails."""
         exact = self.exact(np.asarray(volts, float), supply)
         # The middle of a code is `exact` for either edge: half a code is already taken off.
@@ -92,12 +93,6 @@ class Counts:
         # A full scale beyond the bits: the codes were shifted or scaled up to it.
         return self.span if self.span > codes else min(codes - 1.0, self.span)
 
-    def at_rail(self, codes: FloatArray, *, bipolar: bool) -> BoolArray:
-        """Return which codes lie at or beyond either end: the signal may be anything there.
-
-        Where the signal may be negative (``bipolar``) and some code is, the converter is taken for
-        a signed one, whose low end is minus its high one.
-        """
-        signed = bipolar and bool(np.any(codes < 0))
-        low = -self.top if signed else 0.0
-        return (codes <= low) | (codes >= self.top)
+    def rails(self, *, signed: bool) -> tuple[float, float]:
+        """Return the codes at which it is, or may be, saturated: the signal may lie beyond."""
+        return (-self.top if signed else 0.0), self.top

@@ -18,11 +18,13 @@ from numpy.typing import ArrayLike
 
 from ..errors import InputError
 from ..records import FloatArray
-from .base import Circuit, Fault, Numbers, Readings
+from .base import Circuit, Fault, Numbers, Readings, each_once
 from .checks import excitation, number
 from .counts import Counts
 
 __all__ = ["Branch", "Electrical"]
+
+_CANCELS = 1e-12  # a relative change of ohms that is rounding, not an effect
 
 
 class Branch(NamedTuple):
@@ -62,7 +64,7 @@ class Electrical(Circuit):
     excited_by: ClassVar[str]
     """The field with the supply or the current."""
     bipolar: ClassVar[bool] = False
-    """Whether the signal may be negative."""
+    """Whether the signal may be negative: a converter that gave a negative code is a signed one."""
     tolerated: ClassVar[tuple[tuple[str, str, str], ...]]
     """(field, field of its relative standard uncertainty, words) for each tolerance."""
 
@@ -118,14 +120,11 @@ class Electrical(Circuit):
     def readings(self, signal: ArrayLike) -> Readings:
         """Return ohms, slope, power and faults; in the steps of the module's docstring."""
         y = np.atleast_1d(np.asarray(signal, float))
-        self._check_length(y)
-        volts, scale = self._volts(y)
-        s = (volts - self.offset_v) / self.gain
-        u0, u1, i0, i1 = self.branch()
-        u, i = u0 + u1 * s, i0 + i1 * s
+        u, i, per_signal = self._solved(y)
+        _, u1, _, i1 = self.branch()
         with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
             ohm = u / i - self.lead_ohm
-            slope = (u1 * i - u * i1) / (i * i) * (scale / self.gain)
+            slope = (u1 * i - u * i1) / (i * i) * per_signal
             power = i * i * ohm
         faults = self._faults(y, i, ohm)
         for fault in faults:
@@ -139,15 +138,30 @@ class Electrical(Circuit):
         self._check_length(ohm)
         return self._logged(self._across(ohm + self.lead_ohm))
 
-    def tolerances(self) -> tuple[tuple[str, Self, Self], ...]:
-        """Return (source, circuit one standard uncertainty up, down) for each tolerance given."""
+    def shifts(self, signal: ArrayLike) -> tuple[tuple[str, FloatArray], ...]:
+        """Return (source, change of ohms) for plus one standard uncertainty of each tolerance."""
+        y = np.atleast_1d(np.asarray(signal, float))
         out = []
-        for name, key, words in self.tolerated:
-            u, nominal = getattr(self, key), getattr(self, name)
-            if u:
-                up, down = (replace(self, **{name: nominal * (1 + x)}) for x in (u, -u))
-                out.append((words, up, down))
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+            u, i, _ = self._solved(y)
+            ohm = u / i
+            for name, key, words in self.tolerated:
+                if not getattr(self, key):
+                    continue
+                moved = getattr(self, name) * (1.0 + getattr(self, key))
+                u, i, _ = replace(self, **{name: moved})._solved(y)
+                shift = u / i - ohm
+                if np.nanmax(np.abs(shift / ohm), initial=0.0) > _CANCELS:
+                    out.append((words, shift))
         return tuple(out)
+
+    def steady(self, value: FloatArray, excitation: FloatArray) -> FloatArray:
+        """Return the signal at these ohms had the supply or the current been this."""
+        return self._excited(excitation).signal(value)
+
+    def _excited(self, excitation: FloatArray) -> Self:
+        changes: dict[str, Any] = {self.excited_by: excitation}
+        return replace(self, **changes)
 
     def _check_length(self, y: FloatArray) -> None:
         known = self.excitation
@@ -158,12 +172,18 @@ class Electrical(Circuit):
             how = "give one value per sample, or one number"
             raise InputError(f"[circuit] {self.excited_by}", what, how)
 
-    def _volts(self, y: FloatArray) -> tuple[FloatArray, Numbers]:
-        """Volts at the reader, and volts per unit of the signal."""
-        converter, known = self.converter, self.excitation
-        if converter is None:
-            return y, 1.0
-        return converter.volts(y, known), converter.volts_per_code(known)
+    def _solved(self, y: FloatArray) -> tuple[FloatArray, FloatArray, Numbers]:
+        """Voltage and current of the sensor with its leads, and d s / d signal."""
+        self._check_length(y)
+        # s = start + per_signal y, put into the two lines first: whole arrays are slow, numbers not
+        per_signal: Numbers = 1.0 / self.gain
+        start: Numbers = -self.offset_v / self.gain
+        if self.converter is not None:
+            per_signal = self.converter.volts_per_code(self.excitation) / self.gain
+            start = (self.converter.volts(0.0, self.excitation) - self.offset_v) / self.gain
+        u0, u1, i0, i1 = self.branch()
+        u = (u0 + u1 * start) + (u1 * per_signal) * y
+        return u, (i0 + i1 * start) + (i1 * per_signal) * y, per_signal
 
     def _across(self, total: FloatArray) -> FloatArray:
         """Signal's voltage at a resistance of sensor and leads together."""
@@ -176,18 +196,22 @@ class Electrical(Circuit):
 
     def _faults(self, y: FloatArray, i: FloatArray, ohm: FloatArray) -> tuple[Fault, ...]:
         off = np.broadcast_to(np.asarray(self.excitation) <= 0, y.shape)
-        found = [Fault(f"the {self.excited_by} is zero or negative", off)]
+        found = [
+            Fault("the signal is infinite", np.isinf(y)),
+            Fault(f"the {self.excited_by} is zero or negative", off),
+        ]
         converter, unit = self.converter, self.signal_unit
         if converter is not None:
-            words = f"the converter is at a rail (codes 0 to {converter.top:g})"
-            found.append(Fault(words, converter.at_rail(y, bipolar=self.bipolar)))
+            low, high = converter.rails(signed=self.bipolar and bool(np.any(y < 0)))
+            words = f"the converter is at a rail (its codes run from {low:g} to {high:g})"
+            found.append(Fault(words, (y <= low) | (y >= high)))
         opened, shorted = self._ends()
         words = f"the signal lies at or beyond that of an open sensor ({_span(opened)} {unit})"
         found.append(Fault(words, i <= 0))
         lead = f" behind leads of {self.lead_ohm:g} ohm" if self.lead_ohm else ""
         words = f"the resistance would be zero or negative{lead}, beyond a shorted sensor's signal"
         found.append(Fault(f"{words} ({_span(shorted)} {unit})", ~(ohm > 0) & ~np.isnan(ohm)))
-        return _each_once(found)
+        return each_once(found)
 
     def _ends(self) -> tuple[FloatArray, FloatArray]:
         """The signal with the sensor open and with it shorted, in the signal's unit."""
@@ -195,18 +219,6 @@ class Electrical(Circuit):
         opened = np.divide(-i0, i1) if np.any(i1) else np.asarray(np.inf)
         shorted = self._across(np.asarray(self.lead_ohm))
         return self._logged(np.asarray(opened)), self._logged(shorted)
-
-
-def _each_once(faults: list[Fault]) -> tuple[Fault, ...]:
-    """Keep a sample under the first reason that it meets, and only reasons that some sample has."""
-    out: list[Fault] = []
-    for words, where in faults:
-        new = where.copy()
-        for earlier in out:
-            new &= ~earlier.where
-        if new.any():
-            out.append(Fault(words, new))
-    return tuple(out)
 
 
 def _span(values: FloatArray) -> str:

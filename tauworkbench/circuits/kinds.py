@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from ..records import FloatArray
-from .base import Circuit, Fault, Readings
+from .base import Circuit, Fault, Readings, each_once
 from .checks import number, word
 from .electrical import Branch, Electrical
 
@@ -160,7 +160,7 @@ class Thermometer(Circuit):
     def readings(self, signal: ArrayLike) -> Readings:
         """Return the signal itself."""
         words = f"the temperature lies at or below {_ABSOLUTE_ZERO_C} degC"
-        return _direct(np.atleast_1d(np.asarray(signal, float)), _ABSOLUTE_ZERO_C, words)
+        return _direct(np.atleast_1d(np.array(signal, float)), _ABSOLUTE_ZERO_C, words)
 
     def signal(self, value: ArrayLike) -> FloatArray:
         """Return the temperature itself [degC]."""
@@ -168,7 +168,9 @@ class Thermometer(Circuit):
 
 
 def _direct(value: FloatArray, bound: float, words: str) -> Readings:
-    bad = (value <= bound) | np.isinf(value)
-    slope = np.where(bad | np.isnan(value), np.nan, 1.0)
-    faults = (Fault(words, bad),) if bad.any() else ()
-    return Readings(np.where(bad, np.nan, value), slope, None, faults)
+    faults = each_once(
+        [Fault("the signal is infinite", np.isinf(value)), Fault(words, value <= bound)]
+    )
+    for fault in faults:
+        value[fault.where] = np.nan
+    return Readings(value, np.where(np.isnan(value), np.nan, 1.0), None, faults)
