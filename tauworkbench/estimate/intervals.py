@@ -20,7 +20,7 @@ import numpy as np
 from scipy.interpolate import PchipInterpolator
 from scipy.stats import t as student
 
-from ..fitting.least_squares import solve_separable
+from ..fitting.least_squares import Separable, solve_separable
 from ..records import FloatArray
 from ..uncertainty import Quantity
 from .candidates import Fitted
@@ -141,15 +141,19 @@ def _profile(fitted: Fitted, scale: Scale, covariance: FloatArray) -> list[_Node
     return sorted([*sides, *middle, centre], key=lambda n: n.hard)
 
 
-class _Held:
+class _Held(Separable):
     """A model with one nonlinear parameter held."""
 
-    def __init__(self, model, place: int, value: float) -> None:  # type: ignore[no-untyped-def]
+    def __init__(self, model: Separable, place: int, value: float) -> None:
         self.model, self.place, self.value = model, place, value
 
-    def columns(self, rest: FloatArray) -> tuple[FloatArray, FloatArray]:
-        columns, slopes = self.model.columns(np.insert(rest, self.place, self.value))
+    def columns(self, values: FloatArray) -> tuple[FloatArray, FloatArray]:
+        columns, slopes = self.model.columns(np.insert(values, self.place, self.value))
         return columns, np.delete(slopes, self.place, axis=0)
+
+    def fixed(self, values: FloatArray) -> tuple[FloatArray, FloatArray] | None:
+        found = self.model.fixed(np.insert(values, self.place, self.value))
+        return None if found is None else (found[0], np.delete(found[1], self.place, axis=0))
 
 
 def _solve_at(fitted: Fitted, place: int, hard: float, scale: Scale) -> _Node:
@@ -166,7 +170,7 @@ def _solve_at(fitted: Fitted, place: int, hard: float, scale: Scale) -> _Node:
     if start.size and model.form.shape_size == 2 and place == 0:
         bounds[0][0], bounds[1][0] = 0.0, 1.0
     found = solve_separable(
-        _Held(model, place, hard),  # type: ignore[arg-type]
+        _Held(model, place, hard),
         model.target(fitted.offset_c),
         start,
         bounds=(list(bounds[0]), list(bounds[1])),

@@ -184,6 +184,10 @@ class Separable:
         """Return the columns and their derivatives; see the class."""
         raise NotImplementedError
 
+    def fixed(self, values: FloatArray) -> tuple[FloatArray, FloatArray] | None:  # noqa: ARG002
+        """Return a part that no linear parameter multiplies, (n,), and its derivatives (q, n)."""
+        return None
+
 
 def project(columns: FloatArray, target: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Linear least squares: the linear values, the residual, and the orthonormal basis."""
@@ -214,18 +218,25 @@ def solve_separable(  # noqa: PLR0913 - the model, what it fits, and how to sear
     returned one is the full Jacobian over nonlinear and linear parameters.
     """
 
-    def projected(values: FloatArray) -> tuple[FloatArray, FloatArray]:
+    def full(values: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
         columns, slopes = model.columns(values)
-        linear, residual, basis = project(columns, target)
-        full = np.einsum("qnm,m->nq", slopes, linear)
-        return residual, full - basis @ (basis.T @ full)
+        fixed = model.fixed(values)
+        rest = target if fixed is None else target - fixed[0]
+        linear, residual, basis = project(columns, rest)
+        by_values = np.einsum("qnm,m->nq", slopes, linear)
+        if fixed is not None:
+            by_values = by_values + fixed[1].T
+        return linear, residual, basis, np.hstack([by_values, columns])
+
+    def projected(values: FloatArray) -> tuple[FloatArray, FloatArray]:
+        _, residual, basis, jacobian = full(values)
+        by_values = jacobian[:, : values.size]
+        return residual, by_values - basis @ (basis.T @ by_values)
 
     found = solve(
         projected, start, bounds=bounds, tolerance=tolerance, max_steps=max_steps, watch=watch
     )
-    columns, slopes = model.columns(found.values)
-    linear, residual, _ = project(columns, target)
-    jacobian = np.hstack([np.einsum("qnm,m->nq", slopes, linear), columns])
+    linear, residual, _, jacobian = full(found.values)
     values = np.concatenate([found.values, linear])
     return Solution(
         values, residual, jacobian, float(residual @ residual), found.converged, found.steps

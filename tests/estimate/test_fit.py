@@ -90,7 +90,7 @@ def test_given_onset_gives_a_dead_time():
 
 
 def test_dead_time_with_a_found_onset_is_refused():
-    with pytest.raises(InputError, match="dead_time.*can't be told from an onset"):
+    with pytest.raises(InputError, match=r"dead_time.*can't be told from an onset"):
         tw.fit_step(trace(3, (6.0,)), dead_time=True)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -35,7 +36,7 @@ def test_several_steps_are_numbered_in_order():
         assert step.bracket_s[0] <= onset <= step.bracket_s[1]
         assert step.final_c - step.start_c == pytest.approx(rise, abs=0.6)
         assert step.window_s[0] < onset < step.window_s[1]
-    assert [a.window_s[1] < b.bracket_s[1] for a, b in zip(found, found[1:], strict=False)]
+    assert all(a.window_s[1] < b.bracket_s[1] for a, b in pairwise(found))
 
 
 @pytest.mark.parametrize("seed", range(6))
