@@ -15,6 +15,7 @@ from ..errors import InputError
 from ..progress import Watch
 from ..records import Step
 from ..result import QUANTITY, Provenance, RunInfo
+from ..units import convert
 from . import measuring
 from .checks import check
 from .choices import Choices
@@ -42,8 +43,10 @@ def _onset(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> Onset:
     test = choices.test
     check(choices, ("onset",))
     if test.onset is not None:
-        channels = inputs["channels"]
-        return marker_onset(channels.time_s, channels.values["marker"], test.onset, test.window_s)
+        found = inputs["channels"]
+        # the level is in the unit that the column was written in
+        marker = convert(found.values["marker"], found.units["marker"], found.written["marker"])
+        return marker_onset(found.time_s, marker, test.onset, test.window_s)
     if test.onset_s is None:
         return Onset()
     return Onset(test.onset_s, 0.0, "before" if test.onset_s == "before" else "given")

@@ -39,12 +39,12 @@ class ChosenLog:
     file: str | None = None
     time: str | None = None
     signal: str | None = None
-    units: Table = _EMPTY
+    units: Table = field(default_factory=lambda: _EMPTY)
     noise_u: float | None = None
     averaging_s: float | None = None
     filter_s: float | None = None
     object: Table | None = None
-    read: Table = _EMPTY
+    read: Table = field(default_factory=lambda: _EMPTY)
 
 
 @dataclass(frozen=True)
@@ -52,7 +52,7 @@ class ChosenKind:
     """``[circuit]`` or ``[law]``: a kind, and the keys that this kind takes."""
 
     kind: str | None = None
-    values: Table = _EMPTY
+    values: Table = field(default_factory=lambda: _EMPTY)
 
 
 @dataclass(frozen=True)
@@ -181,7 +181,7 @@ class Choices:
             taken = {"kind", *keys_taken(table, kind)}
             given = {k: v for k, v in given.items() if k in taken}
         record = _record(table, read_table(table, given, where), where)
-        return replace(self, **{table: record})  # type: ignore[arg-type]
+        return replace(self, **{table: record})
 
     @property
     def name(self) -> str:

@@ -108,15 +108,13 @@ def _line(table: str, key: Key, guesses: dict[str, tuple[Any, str]]) -> str:
 def _takes(table: str, kind: str) -> list[str]:
     if table == "law" and kind == "table":
         return ["file"]
-    return [
-        name if needed else f"({name})" for name, needed in keys_of_kind(table, kind).items()
-    ]
+    return [name if needed else f"({name})" for name, needed in keys_of_kind(table, kind).items()]
 
 
 def _toml(value: Any) -> str:
     import tomlkit
 
-    return tomlkit.item(value).as_string()
+    return str(tomlkit.item(value).as_string())
 
 
 def _plain(line: str) -> str:

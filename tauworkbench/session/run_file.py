@@ -81,7 +81,11 @@ def _lay_over(document: TOMLDocument, name: str, values: Mapping[str, Any]) -> N
     for key, value in values.items():
         if key in table and table[key] == value:
             continue
-        table[key] = _inline(value)
+        new = tomlkit.item(_inline(value))
+        if key in table:
+            new.trivia.comment_ws = table[key].trivia.comment_ws
+            new.trivia.comment = table[key].trivia.comment
+        table[key] = new
 
 
 def _inline(value: Any) -> Any:

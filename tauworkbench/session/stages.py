@@ -177,8 +177,10 @@ def _run(stage: Stage, choices: Choices, inputs: Mapping[str, Any], watch: Watch
 def _placed(error: InputError, stage: Stage, choices: Choices) -> InputError:
     """Give an error from a lower room, which names an argument, its place in the run file."""
     where = error.where
-    files = [str(path) for path in stage.files(choices)]
-    if where.startswith("[") or any(where.startswith(file) for file in files):
+    named = re.search(r"(?:^| )(\[[a-z]+\].*)", where)
+    if named:
+        return _moved(error, named[1])
+    if any(where.startswith((str(path), path.name)) for path in stage.files(choices)):
         return error
     tables = list(dict.fromkeys(name.partition(".")[0] for name in stage.reads))
     argument = re.split(r"[^A-Za-z0-9_]", where, maxsplit=1)[0]
