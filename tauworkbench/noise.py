@@ -1,9 +1,9 @@
 r"""The noise of a record's samples, from the record itself.
 
-Each four neighbouring samples give the residual of a parabola through them (a third divided
+Each five neighbouring samples give the residual of a cubic through them (a fourth divided
 difference, scaled to the variance of one sample), in which levels, drifts and ramps cancel exactly
 at any sampling times, and an exponential of time constant :math:`\tau` and height A leaves no more
-than :math:`A (\Delta t / \tau)^3 / \sqrt{20}`. A robust scale of these residuals (Huber's
+than :math:`A (\Delta t / \tau)^4 / \sqrt{70}`. A robust scale of these residuals (Huber's
 M-estimate of scale; from memory) is the noise; onsets and spikes are among its clipped few.
 
 Use it for: white noise, of one size or of one that follows the signal or the excitation.
@@ -14,22 +14,29 @@ then differ by less than their noise, and the answer is too small. A fit's own r
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 from scipy.special import chdtri
 
-from .records import FloatArray
+from .records import BoolArray, FloatArray
 
 __all__ = ["excitation_levels", "resolution", "sample_noise"]
 
-_MOST = 100_000  # residuals looked at: the scale is then known to 0.4 %
+IndexArray = NDArray[np.intp]
+
+_MOST = 40_000  # residuals looked at: the scale is then known to 0.7 %
 _BINS = 8
-_PER_BIN = 80  # residuals, for a noise known to 14 %: weights so scattered cost a fit 2 to 3 %
+_PER_BIN = 30  # residuals at least; a line or a parabola through the levels takes their scatter
+_STENCIL = 5  # samples in a difference
 _FEW = 12  # fewer residuals tell nothing about one excitation
 _CLIP = 1.5
-_SCATTER = 1.25  # standard deviation of ln(scale) times the root of the residuals; measured
+_SCATTER = 1.33  # standard deviation of ln(scale) times the root of the residuals; measured
 _CHANCE = 1e-4  # of seeing levels of unequal noise where there are none
+_WIDE = 3.0  # levels that span more than this factor are cut on a logarithmic scale
+_BENT = 2  # highest power of the level in ln(noise)
+_CHANCE_OF_FORM = 0.01
 _WORTH = 1.25  # a ratio of largest to smallest noise below this isn't worth weights
 _SAME_EXCITATION = math.log(1.1)
 _ONE_LEVEL = 24  # samples
@@ -60,21 +67,23 @@ def sample_noise(
     Returns
     -------
     ndarray, shape (n,)
-        NaN where the signal is, or everywhere where fewer than four samples stand together.
+        NaN where the signal is, or everywhere where fewer than five samples are there.
         Correlated noise and tolerances are *not* in it.
     """
     time, y = np.asarray(time_s, float), np.asarray(signal, float)
     out = np.full(y.shape, np.nan)
     good = np.flatnonzero(np.isfinite(y))
-    time, y = time[good], y[good]
-    group = np.zeros(good.size, int)
+    if good.size < _STENCIL:
+        return out
+    if good.size < y.size:
+        time, y = time[good], y[good]
+    groups: Sequence[slice | BoolArray] = [slice(None)]
     if excitation is not None:
-        group = _groups(np.broadcast_to(np.asarray(excitation, float), out.shape)[good])
+        groups = _groups(np.broadcast_to(np.asarray(excitation, float), out.shape)[good])
     noise = np.full(good.size, np.nan)
-    for each in range(int(group.max(initial=0)) + 1):
-        inside = group == each
-        starts = np.flatnonzero(inside[:-3] & inside[1:-2] & inside[2:-1] & inside[3:])
-        if starts.size >= min(_FEW, good.size - 3):
+    for inside in groups:
+        starts = _starts(good.size, inside)
+        if starts.size >= min(_FEW, good.size - _STENCIL + 1):
             noise[inside] = _by_level(time, y, starts, y[inside], quantum)
     known = np.isfinite(noise)
     if known.any():
@@ -88,12 +97,10 @@ def sample_noise(
 def excitation_levels(excitation: ArrayLike) -> FloatArray:
     """Return each sample's level of excitation, shape (n,): the median over its own level."""
     values = np.asarray(excitation, float)
-    group = _groups(values)
-    out = np.empty(values.shape)
-    for each in range(int(group.max(initial=0)) + 1):
-        inside = group == each
+    out = values.copy()
+    for inside in _groups(values):
         if inside.any():
-            out[inside] = np.nanmedian(values[inside])
+            out[inside] = np.median(values[inside])
     return out
 
 
@@ -121,53 +128,74 @@ def resolution(signal: ArrayLike) -> float | None:
 
 
 def _by_level(
-    time: FloatArray, y: FloatArray, starts: np.ndarray, at: FloatArray, quantum: float | None
+    time: FloatArray, y: FloatArray, starts: IndexArray, at: FloatArray, quantum: float | None
 ) -> FloatArray:
     """Noise at the levels ``at``, from the residuals that begin at ``starts``."""
-    starts = starts[:: max(1, starts.size // _MOST)]
     residual, level = _residuals(time, y, starts)
     overall = _scale(residual)
     one = np.full(at.size, overall)
     if quantum and overall < 0.7 * quantum:  # where a level lies between two codes rules the rest
         return one
-    level, at = _spread(level, at)
-    found = _levels(level, residual)
+    low = float(level.min())
+    logarithmic = low > 0 and float(level.max()) > _WIDE * low
+    found = _levels(np.log(level) if logarithmic else level, residual)
     if found is None:
         return one
     centres, scales, counts = found
     if np.any(scales <= 0):
         return one
-    weights, logs = counts / _SCATTER**2, np.log(scales)
-    misfit = float(np.sum(weights * (logs - np.average(logs, weights=weights)) ** 2))
-    alike = misfit < chdtri(scales.size - 1, _CHANCE) or np.ptp(logs) < math.log(_WORTH)
-    return one if alike else np.exp(np.interp(at, centres, logs))
+    logs, weights = np.log(scales), counts / _SCATTER**2
+    smooth = _smooth(centres, logs, weights)
+    if smooth is None or np.ptp(logs) < math.log(_WORTH):
+        return one
+    place = np.log(np.maximum(at, low)) if logarithmic else at
+    return np.asarray(np.exp(np.interp(place, centres, smooth)), float)
+
+
+def _smooth(centres: FloatArray, logs: FloatArray, weights: FloatArray) -> FloatArray | None:
+    """Logarithms of the noise at the centres without their scatter; None when they're alike.
+
+    The lowest of a constant, a line and a parabola that the scatter allows; else as they are.
+    """
+    x = (centres - centres.mean()) / np.ptp(centres)
+    for degree in range(min(_BENT + 1, centres.size)):
+        root = np.sqrt(weights)
+        columns = np.vander(x, degree + 1)
+        fitted = columns @ np.linalg.lstsq(columns * root[:, None], logs * root, rcond=None)[0]
+        misfit = float(np.sum(weights * (logs - fitted) ** 2))
+        spare = centres.size - degree - 1
+        if spare == 0 or misfit < chdtri(spare, _CHANCE if degree == 0 else _CHANCE_OF_FORM):
+            return None if degree == 0 else np.asarray(fitted, float)
+    return logs
+
+
+def _starts(n: int, inside: slice | BoolArray) -> IndexArray:
+    """First samples of fives within one excitation; a few of very many."""
+    if isinstance(inside, slice):
+        return np.arange(0, n - _STENCIL + 1, max(1, n // _MOST))
+    together = np.convolve(inside, np.ones(_STENCIL, int), "valid") == _STENCIL
+    starts = np.flatnonzero(together)
+    return starts[:: max(1, starts.size // _MOST)]
 
 
 def _residuals(
-    time: FloatArray, y: FloatArray, starts: np.ndarray
+    time: FloatArray, y: FloatArray, starts: IndexArray
 ) -> tuple[FloatArray, FloatArray]:
-    """Third divided differences with the variance of one sample, and the mean of each four."""
-    t = [time[starts + j] for j in range(4)]
-    span = t[3] - t[0]
-    total, square, mean = np.zeros(starts.size), np.zeros(starts.size), np.zeros(starts.size)
-    for j in range(4):
+    """Divided differences with the variance of one sample, and the level without a spike."""
+    t = [time[starts + j] for j in range(_STENCIL)]
+    values = [y[starts + j] for j in range(_STENCIL)]
+    span = t[-1] - t[0]
+    total, square = np.zeros(starts.size), np.zeros(starts.size)
+    for j in range(_STENCIL):
         product = np.ones(starts.size)
-        for m in range(4):
+        for m in range(_STENCIL):
             if m != j:
                 product *= (t[j] - t[m]) / span
-        values = y[starts + j]
-        total += values / product
+        total += values[j] / product
         square += 1.0 / product**2
-        mean += values / 4.0
-    return total / np.sqrt(square), mean
-
-
-def _spread(level: FloatArray, at: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Levels on the scale on which they are cut: logarithmic where they span a factor of three."""
-    low, high = float(level.min()), float(level.max())
-    if low > 0 and high > 3.0 * low:
-        return np.log(level), np.log(np.maximum(at, low))
-    return level, at
+    highest, lowest = np.maximum.reduce(values), np.minimum.reduce(values)
+    level = (np.add.reduce(values) - highest - lowest) / (_STENCIL - 2)
+    return total / np.sqrt(square), level
 
 
 def _levels(
@@ -213,8 +241,8 @@ def _scale(residual: FloatArray) -> float:
     return math.sqrt(s2)
 
 
-def _groups(excitation: FloatArray) -> np.ndarray:
-    """Number of each sample's level of excitation: levels lie more than 10 % apart."""
+def _groups(excitation: FloatArray) -> list[BoolArray]:
+    """Which samples have which level of excitation: levels lie more than 10 % apart."""
     with np.errstate(divide="ignore", invalid="ignore"):
         size = np.log(np.abs(excitation))
     known = np.sort(size[np.isfinite(size)])
@@ -224,4 +252,5 @@ def _groups(excitation: FloatArray) -> np.ndarray:
         if cut - last >= _ONE_LEVEL and known.size - cut >= _ONE_LEVEL:
             cuts.append((known[cut - 1] + known[cut]) / 2.0)
             last = cut
-    return np.searchsorted(np.array(cuts), size)
+    number = np.searchsorted(np.array(cuts), size)
+    return [np.asarray(number == k) for k in range(len(cuts) + 1)]

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from typing import Any, Protocol
+from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from .circuits import Circuit, Readings
 from .errors import InputError
@@ -14,6 +15,8 @@ from .noise import excitation_levels, resolution, sample_noise
 from .records import BoolArray, Effect, FloatArray, Reader, Trace
 
 __all__ = ["ResistanceLaw", "to_temperature"]
+
+RowNumbers = NDArray[np.int64]
 
 _MOST_IMPOSSIBLE = 0.01
 _NO_READER = Reader()
@@ -127,7 +130,7 @@ def to_temperature(  # noqa: PLR0913 - a log, what it was logged with, and what 
         reader=reader,
         cautions=(
             *cautions,
-            *_set_aside(time, y, circuit, got, celsius, _rows(rows, y.size)),
+            *_set_aside(_Record(time, y, circuit.signal_unit, _rows(rows, y.size)), got, celsius),
             *_out_of_range(celsius, applied.valid_c),
         ),
     )
@@ -143,7 +146,7 @@ def _row(name: str, values: ArrayLike) -> FloatArray:
     return out
 
 
-def _rows(rows: ArrayLike | None, n: int) -> np.ndarray[Any, np.dtype[np.int64]] | None:
+def _rows(rows: ArrayLike | None, n: int) -> RowNumbers | None:
     if rows is None:
         return None
     out = np.asarray(rows, np.int64)
@@ -193,45 +196,42 @@ def _effects(
     return tuple(Effect(source, k) for source, k in (*circuits, *law.effects_k(value)))
 
 
-def _set_aside(
-    time: FloatArray,
-    y: FloatArray,
-    circuit: Circuit,
-    got: Readings,
-    celsius: FloatArray,
-    rows: np.ndarray[Any, np.dtype[np.int64]] | None,
-) -> list[str]:
+@dataclass(frozen=True, eq=False)
+class _Record:
+    """What a caution needs to name a sample."""
+
+    time: FloatArray
+    y: FloatArray
+    unit: str
+    rows: RowNumbers | None
+
+    def set_aside(self, where: BoolArray, reason: str) -> str:
+        n, i = int(where.sum()), int(np.argmax(where))
+        subject = "1 sample was" if n == 1 else f"{n} samples were"
+        row = "" if self.rows is None else f"row {self.rows[i]}, "
+        value = "" if np.isnan(self.y[i]) else f": {self.y[i]:.6g} {self.unit}"
+        place = f"{row}{self.time[i]:.6g} s{value}"
+        return f"{subject} set aside: {reason}; the first at {place}"
+
+
+def _set_aside(record: _Record, got: Readings, celsius: FloatArray) -> list[str]:
     """Cautions for the samples that have no temperature, by reason."""
-    unit = circuit.signal_unit
-    out = [_count(f.where, f.words, time, y, unit, rows) for f in got.faults]
-    share = float(np.mean(got.impossible)) if y.size else 0.0
+    out = [record.set_aside(f.where, f.words) for f in got.faults]
+    impossible = got.impossible
+    share = float(np.mean(impossible)) if impossible.size else 0.0
     if share > _MOST_IMPOSSIBLE:
         out.append(
             f"{share:.2%} of all samples are impossible for this circuit; more than 1 % in a "
             "window can't be fitted: check the circuit's values, the unit and the wiring"
         )
-    missing = np.isnan(got.value) & ~got.impossible
+    missing = np.isnan(got.value) & ~impossible
     if missing.any():
-        out.append(_count(missing, "a value is missing", time, y, unit, rows))
+        out.append(record.set_aside(missing, "a value is missing"))
     lawless = ~np.isfinite(celsius) & np.isfinite(got.value)
     if lawless.any():
         words = "the law gives no temperature at their resistance"
-        out.append(_count(lawless, words, time, y, unit, rows))
+        out.append(record.set_aside(lawless, words))
     return out
-
-
-def _count(
-    where: BoolArray,
-    words: str,
-    time: FloatArray,
-    y: FloatArray,
-    unit: str,
-    rows: np.ndarray[Any, np.dtype[np.int64]] | None,
-) -> str:
-    n, i = int(where.sum()), int(np.argmax(where))
-    place = f"row {rows[i]}, {time[i]:.6g} s" if rows is not None else f"{time[i]:.6g} s"
-    subject = "1 sample was" if n == 1 else f"{n} samples were"
-    return f"{subject} set aside: {words}; the first at {place}: {y[i]:.6g} {unit}"
 
 
 def _out_of_range(celsius: FloatArray, valid_c: tuple[float, float] | None) -> list[str]:

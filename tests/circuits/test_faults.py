@@ -32,7 +32,7 @@ IMPOSSIBLE = {
     "high leg at zero": (Divider(**HIGH), 0.0, r"open sensor \(0 V\)"),
     "less than the leads": (Divider(**LOW, lead_ohm=100.0), 0.03, "behind leads of 100 ohm"),
     "more than the reader's share": (Divider(**LOW, input_ohm=1e4), 1.66, r"\(1.65 V\)"),
-    "infinite": (Divider(**LOW), math.inf, "open sensor"),
+    "infinite": (Divider(**LOW), math.inf, "infinite"),
     "amplified above the supply": (Divider(**LOW, gain=2.0, offset_v=0.1), 6.8, r"\(6.7 V\)"),
     "code 0": (Divider(**LOW, counts=CODES), 0.0, "at a rail"),
     "full scale": (Divider(**LOW, counts=CODES), 4095.0, r"run from 0 to 4095"),
