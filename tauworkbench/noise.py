@@ -20,10 +20,10 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.special import chdtri
 
-from .records import BoolArray, FloatArray
-
 __all__ = ["excitation_levels", "resolution", "sample_noise"]
 
+FloatArray = NDArray[np.float64]
+BoolArray = NDArray[np.bool_]
 IndexArray = NDArray[np.intp]
 
 _MOST = 40_000  # residuals looked at: the scale is then known to 0.7 %
