@@ -120,8 +120,8 @@ class Electrical(Circuit):
     def readings(self, signal: ArrayLike) -> Readings:
         """Return ohms, slope, power and faults; in the steps of the module's docstring."""
         y = np.atleast_1d(np.asarray(signal, float))
-        u, i, per_signal = self._solved(y)
         _, u1, _, i1 = self.branch()
+        u, i, per_signal = self._solved(y)
         with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
             ohm = u / i - self.lead_ohm
             slope = (u1 * i - u * i1) / (i * i) * per_signal
@@ -142,8 +142,8 @@ class Electrical(Circuit):
         """Return (source, change of ohms) for plus one standard uncertainty of each tolerance."""
         y = np.atleast_1d(np.asarray(signal, float))
         out = []
+        u, i, _ = self._solved(y)
         with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-            u, i, _ = self._solved(y)
             ohm = u / i
             for name, key, words in self.tolerated:
                 if not getattr(self, key):
@@ -182,8 +182,10 @@ class Electrical(Circuit):
             per_signal = self.converter.volts_per_code(self.excitation) / self.gain
             start = (self.converter.volts(0.0, self.excitation) - self.offset_v) / self.gain
         u0, u1, i0, i1 = self.branch()
-        u = (u0 + u1 * start) + (u1 * per_signal) * y
-        return u, (i0 + i1 * start) + (i1 * per_signal) * y, per_signal
+        with np.errstate(invalid="ignore", over="ignore"):
+            u = (u0 + u1 * start) + (u1 * per_signal) * y
+            i = (i0 + i1 * start) + (i1 * per_signal) * y
+        return u, i, per_signal
 
     def _across(self, total: FloatArray) -> FloatArray:
         """Signal's voltage at a resistance of sensor and leads together."""

@@ -7,6 +7,8 @@ from typing import Any
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from tauworkbench.circuits import (
     Bridge,
@@ -61,6 +63,25 @@ def test_impossible(circuit, value, words):
     assert np.isnan(got.slope[0])
     with pytest.raises(AssertionError, match=words):
         raise AssertionError(got.faults[0].words)
+
+
+@pytest.mark.parametrize(
+    "circuit",
+    [
+        Divider(**LOW, fixed_rel_u=0.01),
+        Divider(**HIGH, counts=CODES, supply_rel_u=0.01),
+        CurrentSource(current=1e-4, current_rel_u=0.1),
+        BRIDGE,
+        Ohms(),
+        Thermometer(),
+    ],
+    ids=lambda c: type(c).__name__,
+)
+@given(value=st.floats())
+def test_no_value_makes_a_warning_or_a_half_answer(circuit, value):
+    got = circuit.readings([value])
+    circuit.shifts([value])
+    assert np.isfinite(got.value[0]) or got.impossible[0] or math.isnan(value)
 
 
 def test_each_sample_has_one_reason():
