@@ -122,7 +122,13 @@ def resolution(signal: ArrayLike) -> float | None:
     gaps = gaps[gaps > 1e-9 * np.max(np.abs(levels))]  # the same value, printed from other sums
     if not gaps.size:
         return None
-    step = float(np.quantile(gaps, 0.1))
+    step = float(np.quantile(gaps, 0.1, method="lower"))
+    for most in (
+        5.5,
+        50.5,
+    ):  # printed codes: each gap is rounded, so that many tell the step better
+        some = gaps[gaps < most * step]
+        step = float(some.sum() / np.round(some / step).sum())
     near = np.abs(gaps / step - np.round(gaps / step)) < 0.2
     return step if np.mean(near) >= 0.9 else None
 

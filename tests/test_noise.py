@@ -177,7 +177,12 @@ def test_resolution_of_a_printed_log(step):
 def test_resolution_of_codes_printed_as_rounded_volts():
     codes = np.round(2000 + 900 * _step(np.arange(2000), 150, 200))
     volts = np.round(codes * 3.3 / 4095, 4)
-    assert resolution(volts) == pytest.approx(3.3 / 4095, rel=0.15)
+    assert resolution(volts) == pytest.approx(3.3 / 4095, rel=1e-3)
+
+
+def test_resolution_of_a_fast_step_of_few_levels():
+    volts = np.round(np.round(1500 + 900 * _step(np.arange(400), 12, 100)) * 3.3 / 4095, 5)
+    assert resolution(volts) == pytest.approx(3.3 / 4095, rel=1e-3)
 
 
 def test_no_resolution_where_values_do_not_repeat():

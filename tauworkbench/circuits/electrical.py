@@ -212,7 +212,8 @@ class Electrical(Circuit):
         found.append(Fault(words, i <= 0))
         lead = f" behind leads of {self.lead_ohm:g} ohm" if self.lead_ohm else ""
         words = f"the resistance would be zero or negative{lead}, beyond a shorted sensor's signal"
-        found.append(Fault(f"{words} ({_span(shorted)} {unit})", ~(ohm > 0) & ~np.isnan(ohm)))
+        found.append(Fault(f"{words} ({_span(shorted)} {unit})", ohm <= 0))
+        found.append(Fault("the resistance would be beyond all bounds", np.isinf(ohm)))
         return each_once(found)
 
     def _ends(self) -> tuple[FloatArray, FloatArray]:
