@@ -18,7 +18,6 @@ from collections.abc import Sequence
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.special import chdtri
 
 __all__ = ["excitation_levels", "resolution", "sample_noise"]
 
@@ -33,10 +32,10 @@ _STENCIL = 5  # samples in a difference
 _FEW = 12  # fewer residuals tell nothing about one excitation
 _CLIP = 1.5
 _SCATTER = 1.33  # standard deviation of ln(scale) times the root of the residuals; measured
-_CHANCE = 1e-4  # of seeing levels of unequal noise where there are none
+_ALIKE = 3.72  # standard deviations: levels of equal noise look unequal once in 10 000 records
 _WIDE = 3.0  # levels that span more than this factor are cut on a logarithmic scale
 _BENT = 2  # highest power of the level in ln(noise)
-_CHANCE_OF_FORM = 0.01
+_FITS = 2.33  # standard deviations: a chance of 0.01
 _WORTH = 1.25  # a ratio of largest to smallest noise below this isn't worth weights
 _SAME_EXCITATION = math.log(1.1)
 _ONE_LEVEL = 24  # samples
@@ -170,9 +169,15 @@ def _smooth(centres: FloatArray, logs: FloatArray, weights: FloatArray) -> Float
         fitted = columns @ np.linalg.lstsq(columns * root[:, None], logs * root, rcond=None)[0]
         misfit = float(np.sum(weights * (logs - fitted) ** 2))
         spare = centres.size - degree - 1
-        if spare == 0 or misfit < chdtri(spare, _CHANCE if degree == 0 else _CHANCE_OF_FORM):
+        if spare == 0 or misfit < _chi_square(spare, _ALIKE if degree == 0 else _FITS):
             return None if degree == 0 else np.asarray(fitted, float)
     return logs
+
+
+def _chi_square(freedom: int, deviations: float) -> float:
+    """Quantile of chi-square, by the cube root of Wilson and Hilferty (1931; from memory)."""
+    part = 2.0 / (9.0 * freedom)
+    return float(freedom * (1.0 - part + deviations * math.sqrt(part)) ** 3)
 
 
 def _starts(n: int, inside: slice | BoolArray) -> IndexArray:
