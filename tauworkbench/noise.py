@@ -94,12 +94,16 @@ def sample_noise(
 
 
 def excitation_levels(excitation: ArrayLike) -> FloatArray:
-    """Return each sample's level of excitation, shape (n,): the median over its own level."""
+    """Return each sample's level of excitation, shape (n,): the median over its own level.
+
+    Values that are missing or not above zero excite nothing: they take no part and stay.
+    """
     values = np.asarray(excitation, float)
     out = values.copy()
     for inside in _groups(values):
-        if inside.any():
-            out[inside] = np.median(values[inside])
+        some = inside & (values > 0)
+        if some.any():
+            out[some] = np.median(values[some])
     return out
 
 
@@ -255,7 +259,7 @@ def _scale(residual: FloatArray) -> float:
 def _groups(excitation: FloatArray) -> list[BoolArray]:
     """Which samples have which level of excitation: levels lie more than 10 % apart."""
     with np.errstate(divide="ignore", invalid="ignore"):
-        size = np.log(np.abs(excitation))
+        size = np.log(excitation)
     known = np.sort(size[np.isfinite(size)])
     cuts, last = [], 0
     for cut in (np.flatnonzero(np.diff(known) > _SAME_EXCITATION) + 1).tolist():
