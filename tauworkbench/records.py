@@ -232,10 +232,14 @@ class NoiseSummary:
 
 @dataclass(frozen=True)
 class StepSummary:
-    """The step as it was fitted; ``onset`` is ``found``, ``given``, ``marker`` or ``before``."""
+    """The step as it was fitted.
+
+    ``onset`` is ``found``, ``given``, ``marker``, ``before``, or ``reference`` where the logged
+    reference drove the model and there is no single step.
+    """
 
     onset: str
-    final_c: Quantity
+    final_c: Quantity | None
     window_s: tuple[float, float]
     onset_s: Quantity | None = None
     start_c: Quantity | None = None

@@ -52,26 +52,32 @@ def budget_of(part: Part, settings: FitSettings) -> Budget | None:
     t63 = part.quantities[_ON]
     if t63.standard_uncertainty is None or t63.low is None or t63.high is None:
         return None
-    lines = [
-        BudgetLine("signal noise", t63.standard_uncertainty),
+    others = [
         *_effects(part),
         *_onset(part, settings),
         *_choice(part),
         *_transfer(settings),
     ]
-    return Budget("response_time_s.63.2", tuple(lines), _combine(t63.value, lines, part.quantile))
+    lines = (BudgetLine("signal noise", t63.standard_uncertainty), *others)
+    return Budget("response_time_s.63.2", lines, _combine(t63, others, part.quantile))
 
 
-def _combine(value: float, lines: list[BudgetLine], quantile: float) -> Combined:
-    """Root sum of squares; a one-sided line widens only the side on which the truth lies."""
+def _combine(noise: Quantity, others: list[BudgetLine], quantile: float) -> Combined:
+    """Root sum of squares; a one-sided line widens only the side on which the truth lies.
+
+    The noise enters each side with its own, perhaps lopsided, interval.
+    """
+    low, high = noise.low, noise.high
+    if low is None or high is None or noise.standard_uncertainty is None:
+        raise ValueError("an open interval can't be combined")
 
     def total(*sides: str | None) -> float:
-        return math.sqrt(sum(x.standard_uncertainty**2 for x in lines if x.side in sides))
+        return sum(x.standard_uncertainty**2 for x in others if x.side in sides)
 
-    low, high = total(None, "low"), total(None, "high")
-    return Combined(
-        total(None, "low", "high"), quantile, value - quantile * low, value + quantile * high
-    )
+    below = math.hypot(noise.value - low, quantile * math.sqrt(total(None, "low")))
+    above = math.hypot(high - noise.value, quantile * math.sqrt(total(None, "high")))
+    u = math.sqrt(noise.standard_uncertainty**2 + total(None, "low", "high"))
+    return Combined(u, quantile, noise.value - below, noise.value + above)
 
 
 def _effects(part: Part) -> list[BudgetLine]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -17,6 +18,9 @@ from .model import Form, StepModel
 from .settings import FitSettings
 from .starts import Record, fit_blocks, grid_kind, search_blocks, shapes, zoom
 
+if TYPE_CHECKING:
+    from .driven import DrivenModel
+
 __all__ = ["Fitted", "fit_candidates", "forms"]
 
 
@@ -29,7 +33,7 @@ class Fitted:
     """
 
     form: Form
-    model: StepModel
+    model: StepModel | DrivenModel
     solution: Solution
     cost: float
     samples: int

@@ -9,6 +9,7 @@ import numpy as np
 from ..records import FloatArray
 from ..thermal.responses import response_times, shape_integral, shape_slopes, time_constants
 from ..thermal.transfer import TransferFunction
+from .driven import DrivenModel
 from .model import StepModel
 
 __all__ = ["RESPONSES", "Derived", "derive"]
@@ -28,14 +29,16 @@ _SMALLEST_SPLIT = 1e-4
 Derived = dict[str, tuple[float, FloatArray]]
 
 
-def derive(model: StepModel, values: FloatArray, offset_c: float) -> Derived:
+def derive(model: StepModel | DrivenModel, values: FloatArray, offset_c: float) -> Derived:
     """Return each number with its gradient over all parameters, by its name.
 
     Names: ``time_constant_1_s``, ..., ``zero_s``, ``dead_time_s``, ``drift_k_per_s``, ``lag_s``,
     ``response_10`` ... ``response_99``, ``onset_s``, ``start_c``, ``final_c``.
     """
     out = _time_constants(model, values)
-    out |= _linear(model, values, offset_c)
+    out |= (
+        _linear(model, values, offset_c) if isinstance(model, StepModel) else _driven(model, values)
+    )
     size = values.size
     total = math.exp(values[0])
     lag = _unit(size, 0) * total
@@ -54,7 +57,7 @@ def _unit(size: int, place: int) -> FloatArray:
     return vector
 
 
-def _time_constants(model: StepModel, values: FloatArray) -> Derived:
+def _time_constants(model: StepModel | DrivenModel, values: FloatArray) -> Derived:
     taus, size = model.taus(values), values.size
     if len(taus) == 1:
         return {"time_constant_1_s": (taus[0], _unit(size, 0) * taus[0])}
@@ -90,7 +93,19 @@ def _linear(model: StepModel, values: FloatArray, offset: float) -> Derived:
     return out
 
 
-def _response_times(model: StepModel, values: FloatArray, known: Derived) -> Derived:
+def _driven(model: DrivenModel, values: FloatArray) -> Derived:
+    """Dead time, and how far the two thermometers disagree."""
+    out: Derived = {}
+    at = model.linear_from
+    if model.form.dead_time:
+        out["dead_time_s"] = (float(values[at - 1]), _unit(values.size, at - 1))
+    if model.free:
+        for place, name in enumerate(("offset_k", "gain"), start=at):
+            out[name] = (float(values[place]), _unit(values.size, place))
+    return out
+
+
+def _response_times(model: StepModel | DrivenModel, values: FloatArray, known: Derived) -> Derived:
     """Invert an ideal step by implicit differentiation: dt = -(dg/dp) / (dg/dt)."""
     shape = values[: model.form.shape_size]
     zero, zero_slope = known.get("zero_s", (0.0, np.zeros(values.size)))

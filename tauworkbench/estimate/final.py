@@ -36,9 +36,12 @@ def final_least_squares(fitted: Fitted) -> Any:
             slow_first = sorted(map(float, user[:poles]), reverse=True)
             values[:poles], turn = shape_of(slow_first), _shape_by_taus(user[:poles])
         columns, slopes = model.columns(values[:lead])
-        jacobian = np.hstack([np.einsum("qnm,m->nq", slopes, values[lead:]), columns])
-        jacobian[:, :poles] = jacobian[:, :poles] @ turn
-        return columns @ values[lead:] - target, jacobian
+        by_values = np.einsum("qnm,m->nq", slopes, values[lead:])
+        curve, fixed = columns @ values[lead:], model.fixed(values[:lead])
+        if fixed is not None:
+            curve, by_values = curve + fixed[0], by_values + fixed[1].T
+        by_values[:, :poles] = by_values[:, :poles] @ turn
+        return curve - target, np.hstack([by_values, columns])
 
     return minimise(_parameters(fitted, merging), evaluate)
 
@@ -66,10 +69,7 @@ def _parameters(fitted: Fitted, merging: bool) -> dict[str, Named]:
     if form.has_time:
         name = "onset_s" if form.onset == "found" else "dead_time_s"
         out[name] = Named(float(values[form.shape_size]))
-    linear = list(values[model.linear_from :])
-    if not model.known_start:
-        out["start_minus_offset_k"] = Named(float(linear.pop(0)))
-    for k, value in zip(form.orders, linear, strict=True):
-        out[{1: "rise_k", 0: "impulse_k_s", 2: "drift_k_per_s"}[k]] = Named(float(value))
+    linear = zip(model.linear_names, values[model.linear_from :], strict=True)
+    out |= {name: Named(float(value)) for name, value in linear}
     out["offset_c"] = Named(fitted.offset_c, vary=False)
     return out

@@ -17,7 +17,8 @@ from ..uncertainty import Quantity
 from .budget import Part, budget_of
 from .candidates import Fitted, fit_candidates
 from .choice import Choice, choose
-from .derived import RESPONSES
+from .derived import RESPONSES, derive
+from .driven import fit_driven, whole_record
 from .final import final_least_squares
 from .record import Estimate
 from .reservations import reservations
@@ -32,6 +33,8 @@ _PARAMETERS = (
     "zero_s",
     "dead_time_s",
     "drift_k_per_s",
+    "offset_k",
+    "gain",
 )
 _DYNAMIC = _PARAMETERS[:4]
 
@@ -79,7 +82,9 @@ def fit_steps(
     steps: tuple[Step, ...] | None = None,
 ) -> tuple[Estimate, ...]:
     """Fit the steps that ``settings.steps`` names; ``steps`` are the bracketed ones if known."""
-    if steps is None:
+    if settings.input == "reference":
+        steps = (whole_record(trace, settings),)
+    elif steps is None:
         steps = find_steps(trace, onset=settings.onset_s, window_s=settings.window_s)
     return tuple(_fit_one(trace, s, settings, watch) for s in select(steps, settings.steps))
 
@@ -102,10 +107,14 @@ def select(steps: tuple[Step, ...], wanted: str | int) -> tuple[Step, ...]:
 
 def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> Estimate:
     record = cut(trace, step)
-    fits = fit_candidates(record, step, settings, _drive(trace, settings), watch)
+    more: tuple[str, ...] = ()
+    if settings.input == "reference":
+        fits, more = fit_driven(trace, record, settings, watch)
+    else:
+        fits = fit_candidates(record, step, settings, _drive(trace, settings), watch)
     choice = choose(record, fits, settings)
     fitted, found = choice.fitted, choice.quantities
-    cautions = reservations(record, fitted, found, choice.noise, settings, trace.reader)
+    cautions = more + reservations(record, fitted, found, choice.noise, settings, trace.reader)
     names, covariance = _covariance(choice)
     predict, band = _curves(choice)
     return Estimate(
@@ -140,8 +149,8 @@ def _step_summary(step: Step, settings: FitSettings, choice: Choice) -> StepSumm
     if onset == "given":
         at, u = step.bracket_s[0], settings.onset_u_s
         when = Quantity.wald(at, u, choice.scale.quantile)
-    start = None if onset == "before" else found["start_c"]
-    return StepSummary(onset, found["final_c"], step.window_s, when, start, step.number)
+    start = None if onset == "before" else found.get("start_c")
+    return StepSummary(onset, found.get("final_c"), step.window_s, when, start, step.number)
 
 
 def _fit_summary(settings: FitSettings, choice: Choice) -> FitSummary:
@@ -165,8 +174,6 @@ def _fit_summary(settings: FitSettings, choice: Choice) -> FitSummary:
 
 def _covariance(choice: Choice) -> tuple[tuple[str, ...], FloatArray]:
     """Covariance of the dynamic parameters from noise alone, for whoever recovers an ambient."""
-    from .derived import derive
-
     fitted = choice.fitted
     derived = derive(fitted.model, fitted.values, fitted.offset_c)
     names = tuple(n for n in _DYNAMIC if n in derived)
@@ -194,13 +201,11 @@ def _curves(
 
 
 def _band(fitted: Fitted, time_s: FloatArray, variance: float) -> FloatArray:
-    """Evaluate the curve's standard uncertainty [K] at 2000 places at most, a line between."""
-    model, lead = fitted.model, fitted.model.linear_from
-    marks = fitted.model.blocks.time_s[:: max(fitted.model.blocks.time_s.size // 2000, 1)]
-    columns, slopes = model.at(fitted.values[:lead], marks)
-    jacobian = np.hstack([np.einsum("qnm,m->nq", slopes, fitted.values[lead:]), columns])
+    """Evaluate the curve's standard uncertainty [K] at the blocks, a line between."""
+    blocks = fitted.model.blocks
     covariance = fitted.solution.unscaled_covariance() * variance
+    jacobian = fitted.solution.jacobian
     with np.errstate(invalid="ignore"):
-        square = np.einsum("np,pq,nq->n", jacobian, covariance, jacobian)
+        square = np.einsum("np,pq,nq->n", jacobian, covariance, jacobian) / blocks.weight
     sd = np.sqrt(np.maximum(np.nan_to_num(square), 0.0))
-    return np.asarray(np.interp(time_s, marks, sd))
+    return np.asarray(np.interp(time_s, blocks.time_s, sd))

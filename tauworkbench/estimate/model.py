@@ -22,6 +22,8 @@ from ..thermal.responses import time_constants
 
 __all__ = ["Form", "StepModel"]
 
+_LINEAR_NAMES = {1: "rise_k", 0: "impulse_k_s", 2: "drift_k_per_s"}
+
 
 @dataclass(frozen=True)
 class Form:
@@ -32,7 +34,7 @@ class Form:
     poles : int
         1 or 2.
     zero, dead_time, drift : bool
-    onset : "found", "given" or "before"
+    onset : "found", "given", "before" or "reference"
         A marker's onset counts as given.
     """
 
@@ -140,6 +142,12 @@ class StepModel(Separable):
     def linear_from(self) -> int:
         """Where the linear parameters begin."""
         return self.form.shape_size + self.form.has_time
+
+    @property
+    def linear_names(self) -> tuple[str, ...]:
+        """Names of the linear parameters."""
+        lead = () if self.known_start else ("start_minus_offset_k",)
+        return lead + tuple(_LINEAR_NAMES[k] for k in self.form.orders)
 
     def taus(self, values: FloatArray) -> tuple[float, ...]:
         """Time constants from the slowest [s]."""

@@ -51,6 +51,8 @@ def reservations(
 
 
 def _record_length(record: Record, fitted: Fitted, quantities: dict[str, Quantity]) -> list[str]:
+    if fitted.form.onset == "reference":
+        return []  # any course of the reference will do; the intervals say what it was worth
     begin = quantities["onset_s"].value if "onset_s" in quantities else fitted.model.onset_s
     slowest = quantities["time_constant_1_s"]
     covered = (float(record.time_s[-1]) - max(begin, float(record.time_s[0]))) / slowest.value
