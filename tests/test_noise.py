@@ -109,6 +109,11 @@ def test_each_excitation_has_its_own():
     assert ratio.max() < 1.15
 
 
+def test_an_excitation_that_is_off_takes_no_part():
+    off = np.r_[np.zeros(60), np.nan, -1e-7, np.full(40, 1e-4)]
+    np.testing.assert_array_equal(excitation_levels(off), off)
+
+
 def test_excitation_levels_are_told_apart_and_strays_joined():
     rng = np.random.default_rng(7)
     current = np.repeat([1e-6, 1e-4, 1e-6], 100) * (1 + 0.01 * rng.normal(size=300))
