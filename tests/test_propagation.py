@@ -1,4 +1,4 @@
-"""What noise and tolerances do to degC and to a time constant: other programs, and simulation."""
+"""What tolerances and slow readers do to degC and to a time constant: `uncertainties`, simulation."""
 
 from __future__ import annotations
 
@@ -30,13 +30,6 @@ def trace():
     return tw.to_temperature(np.arange(4.0), VOLTS, circuit=DIVIDER, law=law, noise_u=2e-3)
 
 
-def test_noise_goes_through_the_chain_as_in_uncertainties(trace):
-    """The library ``uncertainties`` (automatic differentiation) as a reference."""
-    expected = [chain(ufloat(v, 2e-3)) for v in VOLTS]
-    assert trace.temperature_c == pytest.approx([e.n for e in expected], rel=1e-10)
-    assert trace.sigma_k == pytest.approx([e.s for e in expected], rel=1e-6)
-
-
 def test_tolerances_go_through_the_chain_as_in_uncertainties(trace):
     """Signed: plus one standard uncertainty of each input, and all together.
 
@@ -51,19 +44,6 @@ def test_tolerances_go_through_the_chain_as_in_uncertainties(trace):
         assert found == pytest.approx(signed, rel=0.02)
     together = np.sqrt(sum(s**2 for s in shift.values()))
     assert together == pytest.approx([e.s for e in expected], rel=0.02)
-
-
-def test_noise_is_the_scatter_of_repeated_readings():
-    """Monte Carlo (JCGM 101): 20 000 readings at each of two levels, noise found from them."""
-    rng = np.random.default_rng(11)
-    law = tw.Beta(1e4, 25.0, 3950.0)
-    n = 20_000
-    level = np.repeat(DIVIDER.signal(law.ohm_at(np.array([5.0, 70.0]))), n)
-    volts = level + rng.normal(0, 1e-3, level.size)
-    trace = tw.to_temperature(np.arange(2.0 * n), volts, circuit=DIVIDER, law=law)
-    for part in (slice(0, n), slice(n, None)):
-        scatter = np.std(trace.temperature_c[part])
-        assert np.median(trace.sigma_k[part]) == pytest.approx(scatter, rel=0.03)
 
 
 TOLERANCES = {
@@ -137,3 +117,36 @@ def test_the_budget_promises_what_a_wrong_value_does(source):
     moved = (up.response_time_s["63.2"].value - down.response_time_s["63.2"].value) / 2
     assert line.standard_uncertainty == pytest.approx(abs(moved), rel=0.15, abs=2e-4)
     assert line.shared
+
+
+@pytest.mark.parametrize("hold", [2, 5, "random"])
+def test_copies_from_a_slow_reader_are_set_aside_and_the_step_stays_whole(hold):
+    """Without that the 63.2 % time of these logs is 1 to 4 % short, tens of its uncertainty."""
+    rng = np.random.default_rng(8)
+    time = np.arange(900) * 0.1
+    new = rng.random(900) < 0.4 if hold == "random" else np.arange(900) % hold == 0
+    new[0] = True
+    rise = np.where(time > 15, 1 - np.exp(-np.maximum(time - 15, 0) / 2.0), 0.0)
+    measured = 20 + 40 * rise + rng.normal(0, 0.02, 900)
+    logged = measured[np.maximum.accumulate(np.where(new, np.arange(900), 0))]
+    trace = tw.to_temperature(time, logged, circuit=tw.Thermometer())
+    assert np.array_equal(trace.kept, new)
+    assert any("repeat the one before" in c for c in trace.cautions)
+    found = tw.fit_step(trace, order=1).response_time_s["63.2"]
+    assert abs(found.value - 2.0) < 4 * found.standard_uncertainty < 0.02
+
+
+@pytest.mark.parametrize("noise", [0.0, 0.05, 0.3, 1.0])
+@pytest.mark.parametrize("tau", [0.05, 0.2, 1.0, 8.0])
+def test_quiet_counts_that_repeat_are_no_copies(noise, tau):
+    time = np.arange(1200) * 0.05
+    rise = np.where(time > 5, 1 - np.exp(-np.maximum(time - 5, 0) / tau), 0.0)
+    codes = np.round(1000 + 1500 * rise + np.random.default_rng(2).normal(0, noise, 1200))
+    counts = {"bits": 12, "reference": 3.3}
+    circuit = tw.Divider(supply=3.3, fixed=1e4, sensor_leg="low", counts=counts)
+    law = tw.Beta(1e4, 25.0, 3950.0)
+    assert np.mean(np.diff(codes) == 0) > 0.2
+    assert tw.to_temperature(time, codes, circuit=circuit, law=law).kept.all()
+    volts = np.round(codes * 3.3 / 4095, 4)
+    bare = replace(circuit, counts=None)
+    assert tw.to_temperature(time, volts, circuit=bare, law=law).kept.all()
