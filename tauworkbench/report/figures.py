@@ -96,6 +96,8 @@ def step_alt(trace: Trace, estimate: Estimate) -> str:
     aside = int(np.count_nonzero(~trace.kept))
     onset = estimate.step.onset_s
     starts = "The window starts inside the response."
+    if estimate.step.onset == "reference":
+        starts = "It follows the logged reference."
     if onset is not None:
         starts = f"The onset is at {words.number(onset.value, words.decimals(onset))} s."
     return (

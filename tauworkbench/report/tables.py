@@ -248,6 +248,8 @@ def _model_rows(estimate: Estimate) -> list[Row]:
 def _level_rows(estimate: Estimate) -> list[Row]:
     step = estimate.step
     rows = [] if step.start_c is None else [quantity_row("start_c", step.start_c)]
+    if step.final_c is None:
+        return rows
     rows.append(quantity_row("final_c", step.final_c))
     onset = words.kind_words(words.ONSETS, step.onset)
     if step.onset_s is None:

@@ -192,6 +192,8 @@ def sources(result: Result) -> tuple[tuple[str, str], ...]:
 def step_words(estimate: Estimate) -> str:
     """Say where a step goes from and to."""
     final = estimate.step.final_c
+    if final is None:
+        return "as the logged reference goes"
     to = f"{words.number(final.value, min(words.decimals(final), 1))} °C"
     start = estimate.step.start_c
     if start is None:
@@ -203,6 +205,11 @@ def step_sentence(estimate: Estimate) -> str:
     """Say where the step goes from and to, and which part of the log was fitted."""
     low, high = estimate.step.window_s
     start = "from " if estimate.step.start_c is not None else ""
+    if estimate.step.final_c is None:
+        return (
+            "The model was driven by the logged reference, whatever its course; fitted from "
+            f"{low:.6g} s to {high:.6g} s of log time."
+        )
     onset = {"found": "found in the record", "given": "given", "marker": "taken from the marker"}
     words_of_onset = onset.get(estimate.step.onset, "")
     said = f"The temperature goes {start}{step_words(estimate)}"

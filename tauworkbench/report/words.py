@@ -43,6 +43,7 @@ ONSETS = {
     "given": "given in the run file",
     "marker": "from the logged marker",
     "before": "before the fitted samples",
+    "reference": "none: the logged reference drives the model",
 }
 CIRCUITS = {
     "divider": "resistive divider",
@@ -67,6 +68,8 @@ NAMES: dict[str, tuple[str, str, float]] = {
     "dead_time_s": ("Dead time", "s", 1.0),
     "transfer_s": ("Duration of the change of medium", "s", 1.0),
     "drift_k_per_s": ("Drift of the final level", "mK/min", 6e4),
+    "offset_k": ("Sensor less reference, at its mean", "K", 1.0),
+    "gain": ("Share of a change that reaches the sensor", "", 1.0),
     "lag_s": ("Lag behind a steady ramp", "s", 1.0),
     "onset_s": ("Onset, log time", "s", 1.0),
     "start_c": ("Temperature before the step", "°C", 1.0),

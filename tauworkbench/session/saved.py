@@ -124,6 +124,7 @@ def _saved(data: Mapping[str, Any]) -> SavedResult:
     for name in ("onset_s", "start_c", "final_c"):
         if name in step:
             step[name] = Quantity.from_dict(step[name])
+    step.setdefault("final_c", None)
     step["window_s"] = tuple(map(float, step["window_s"]))
     fit["time_constants_s"] = tuple(Quantity.from_dict(q) for q in fit["time_constants_s"])
     for name in ("parameters", "response_time_s"):
