@@ -19,6 +19,8 @@ __all__ = ["Record", "cut", "fit_blocks", "search_blocks", "shapes", "zoom"]
 
 # Below this many samples all of them are fitted alone.
 ALL_ALONE = 2500
+# Share of a window's samples that may be impossible for the circuit before the fit is refused.
+MOST_IMPOSSIBLE = 0.01
 _GROWTH = 0.03  # width of a block over its distance from the onset; loses < 0.1 % of information
 _ALONE = 200  # samples that stay alone on either side of an onset
 _COARSE_GROWTH = 0.12  # for the search, where only the right basin is wanted
@@ -53,7 +55,9 @@ class Record:
 
 def cut(trace: Trace, step: Step) -> Record:
     """Take the used samples of a step's window, with their relative weights."""
-    mask = trace.kept & (trace.time_s >= step.window_s[0]) & (trace.time_s <= step.window_s[1])
+    inside = (trace.time_s >= step.window_s[0]) & (trace.time_s <= step.window_s[1])
+    _check_possible(trace, inside)
+    mask = trace.kept & inside
     time, value = trace.time_s, trace.temperature_c
     sigma = trace.sigma_k
     if not mask.all():
@@ -70,6 +74,21 @@ def cut(trace: Trace, step: Step) -> Record:
     stride = max(time.size // 20_000, 1)
     spacing = float(np.median(np.diff(time[::stride]))) / stride
     return Record(time, value, weight, spacing, noise_level(value), mask)
+
+
+def _check_possible(trace: Trace, inside: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> None:
+    """Refuse a window of which too much can't have come from the circuit."""
+    if trace.impossible is None:
+        return
+    count, total = int((trace.impossible & inside).sum()), int(inside.sum())
+    if count > MOST_IMPOSSIBLE * total:
+        raise EstimateError(
+            "window_s",
+            f"{count} of the {total} samples in the window ({100 * count / total:.1f} %) are "
+            f"impossible for the circuit or at a rail, and {100 * MOST_IMPOSSIBLE:g} % are allowed",
+            "check the circuit's values, or choose a window without them",
+            {"impossible": float(count), "samples": float(total)},
+        )
 
 
 def _weights(sigma: FloatArray) -> FloatArray | None:

@@ -278,3 +278,16 @@ def test_coverage_setting_scales_the_interval():
     wide, narrow = (tw.fit_step(trace(1, (6.0,)), coverage=c).lag_s for c in (0.95, 0.68))
     ratio = (wide.high - wide.low) / (narrow.high - narrow.low)
     assert ratio == pytest.approx(1.96 / 0.9945, rel=0.01)
+
+
+@pytest.mark.parametrize(("bad", "refused"), [(10, False), (20, True)])
+def test_impossible_samples_are_refused_above_one_percent(bad, refused):
+    made = trace(1, (6.0,))
+    impossible = np.zeros(made.time_s.size, bool)
+    impossible[600 : 600 + bad] = True
+    made = made.but(impossible=impossible, used=~impossible)
+    if not refused:
+        assert tw.fit_step(made).lag_s.value == pytest.approx(6, rel=0.01)
+        return
+    with pytest.raises(EstimateError, match=r"20 of the 1200 samples.*1 % are allowed"):
+        tw.fit_step(made)
