@@ -1,4 +1,4 @@
-"""What tolerances and slow readers do to degC and to a time constant: `uncertainties`, simulation."""
+"""Tolerances and slow readers, to degC and to a time constant: `uncertainties`, simulation."""
 
 from __future__ import annotations
 
