@@ -26,8 +26,8 @@ __all__ = [
 # A label is the key's name in plain words, unless these are plainer. The unit is added.
 _LABELS = {
     "log.file": "Path of the log",
-    "log.time": "Time",
-    "log.signal": "Signal",
+    "log.time": "Time column",
+    "log.signal": "Signal column",
     "log.units.time": "Unit of the time",
     "log.units.signal": "Unit of the signal",
     "log.noise_u": "Noise of one sample",
@@ -56,7 +56,7 @@ _LABELS = {
     "circuit.counts.edge": "Converter rounds or cuts off",
     "law.kind": "Resistance law",
     "law.resistance": "Resistance",
-    "law.temperature_c": "at temperature",
+    "law.temperature_c": "Temperature of that resistance",
     "law.beta_k": "B value",
     "law.points": "Calibration points",
     "law.r0": "Resistance at 0 °C",
@@ -193,7 +193,10 @@ def kind_fields(table: str, choices: Choices) -> list[tuple[str, bool]]:
     if kind is None:
         return out
     by_points = table == "law" and "points" in choices.law.values
+    known = keys_of(table)
     for name, needed in keys_taken(table, kind).items():
+        if name not in known:  # an argument for Python alone
+            continue
         if (table, name) == ("circuit", "counts"):
             in_counts = choices.log.units.get("signal") == "counts" or chosen(
                 choices, "circuit.counts"
@@ -211,7 +214,7 @@ def missing_words(error: InputError) -> str:
     head, _, name = error.where.rpartition("] ")
     table = head.rpartition("[")[2]
     label = _LABELS.get(f"{table}.{name}", name.replace("_", " "))
-    return f"needs: {label[:1].lower()}{label[1:]}"
+    return f"needs: {label if label[1:2] in (' ', '') else label[:1].lower() + label[1:]}"
 
 
 def _options(name: str, spec: Key, columns: Options) -> tuple[str, Options]:

@@ -3,15 +3,16 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from ..errors import InputError
-from ..session.choices import Choices
+from ..session.choices import Choices, keys_taken
 from ..session.stages import Resolved
 from ..session.toml_file import is_plain_file
-from .fields import Typed, set_choice
+from .fields import Typed, chosen, set_choice
 from .picture import curve_of, full_of, markers_of, step_of
 from .text import NotANumberError, number_of
 from .words import error_words
@@ -19,7 +20,7 @@ from .words import error_words
 if TYPE_CHECKING:
     from .show import State
 
-__all__ = ["chosen_anew", "looked", "named", "refused", "with_log"]
+__all__ = ["chosen_anew", "looked", "named", "refused", "remembered", "with_log"]
 
 _STEP_MARGIN = 0.08  # of the window, on either side
 _WIDTHS, _RATIOS = (300, 4000), (0.5, 4.0)
@@ -113,7 +114,34 @@ def _set(state: State, found: Resolved, name: str, text: str, typed: dict[str, T
         return choices.but("test", onset_s=_time(text), onset=None)
     if name.startswith("window."):
         return _with_edge(choices, found, name, text)
-    return set_choice(choices, name, text, typed)
+    changed = set_choice(choices, name, text, typed)
+    return _with_earlier(changed, name, state.earlier) if name.endswith(".kind") else changed
+
+
+def _with_earlier(
+    choices: Choices, name: str, earlier: Mapping[str, Mapping[str, Any]]
+) -> Choices:
+    """Give a newly chosen kind the values that it took before, or that another kind took."""
+    table = name.partition(".")[0]
+    kind = getattr(choices, table).kind if table in earlier else None
+    if kind is None:
+        return choices
+    taken, present = keys_taken(table, kind), chosen(choices, table)
+    back = {k: v for k, v in earlier[table].items() if k in taken and k not in present}
+    if "points" in present:  # coefficients and points exclude each other
+        back = {}
+    return choices.but(table, **back)
+
+
+def remembered(state: State, choices: Choices) -> Mapping[str, Mapping[str, Any]]:
+    """Return what circuit and law held so far, to be given back with their kind."""
+    out = dict(state.earlier)
+    for table in ("circuit", "law"):
+        values = dict(chosen(choices, table) or {})
+        values.pop("kind", None)
+        values.pop("points", None)
+        out[table] = {**out.get(table, {}), **values}
+    return MappingProxyType(out)
 
 
 def _with_edge(choices: Choices, found: Resolved, name: str, text: str) -> Choices:

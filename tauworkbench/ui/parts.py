@@ -34,6 +34,9 @@ class Part:
         ``fields(choices)``: the fields and whether each may stand behind "more choices".
     folds : bool
         Whether it begins folded when the run file that was opened has settled it.
+    tables : tuple of str
+        Tables whose gaps are told before what the stages say: the circuit before the law, as on
+        the page.
     """
 
     name: str
@@ -42,6 +45,7 @@ class Part:
     waits_for: str
     fields: Callable[[Choices], Fields]
     folds: bool = False
+    tables: tuple[str, ...] = ()
 
 
 def _circuit_and_law(choices: Choices) -> Fields:
@@ -67,7 +71,7 @@ PARTS: tuple[Part, ...] = (
     ),
     Part(
         "circuit", "Circuit and law", ("law", "trace"), "waits for the columns", _circuit_and_law,
-        folds=True,
+        folds=True, tables=("circuit",),
     ),
     Part(
         "step", "Step", ("onset", "steps"), "waits for temperatures", _fixed(

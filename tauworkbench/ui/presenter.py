@@ -116,8 +116,12 @@ class Presenter:
 
     def refuse(self, error: InputError) -> None:
         """Show an error that no field is to blame for."""
-        self._change(notice=error_words(error))
-        self._refresh()
+        self.say(error_words(error))
+
+    def say(self, words: str) -> None:
+        """Show that something went wrong, until the user does something else."""
+        self._change(notice=words)
+        self._show()
 
     def complete(self) -> Resolved:
         """Do here and now what is pending; for scripts and tests."""
@@ -281,7 +285,8 @@ class Presenter:
             self._resolve()
             return
         self._past.add(self._state.choices)
-        self._change(choices=choices)
+        earlier = moves.remembered(self._state, self._state.choices)
+        self._change(choices=choices, earlier=earlier)
         self._resolve()
         self._keep()
 
@@ -289,6 +294,8 @@ class Presenter:
         log = self._found.get("log")
         if log is not None:
             self._autosave.keep(self._state.choices, self._state.run_file, log.sha256)
+            if self._autosave.problem:
+                self.say(self._autosave.problem)
 
     def _resolve(self) -> None:
         self._found = resolve(self._state.choices, self._memory)

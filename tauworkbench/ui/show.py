@@ -10,6 +10,7 @@ from types import MappingProxyType
 from typing import Any
 
 from ..errors import InputError
+from ..session.checks import check
 from ..session.choices import Choices
 from ..session.stages import Resolved
 from . import words
@@ -38,6 +39,8 @@ class State:
     unfolded, more : mapping of str to bool
         By part: whether the user unfolded it, and its further choices. Where they said nothing, a
         part is unfolded when it was not done as the log was opened (``done_at_first``).
+    earlier : mapping of str to mapping
+        What ``circuit`` and ``law`` held under whatever kind: another kind loses nothing.
     view_s : (low, high) or None
         The times in view; None for the whole log.
     dark, width, ratio
@@ -50,6 +53,7 @@ class State:
     typed: Mapping[str, Typed] = field(default_factory=lambda: _EMPTY)
     unfolded: Mapping[str, bool] = field(default_factory=lambda: _EMPTY)
     more: Mapping[str, bool] = field(default_factory=lambda: _EMPTY)
+    earlier: Mapping[str, Mapping[str, Any]] = field(default_factory=lambda: _EMPTY)
     done_at_first: frozenset[str] = frozenset()
     view_s: tuple[float, float] | None = None
     dark: bool = False
@@ -114,23 +118,33 @@ def done_parts(found: Resolved) -> frozenset[str]:
 
 def _part(part: Part, state: State, found: Resolved) -> PartShown:
     columns = words.column_options(found.get("log"))
-    error = next((found.errors[s] for s in part.stages if s in found.errors), None)
+    error = _error(part, state.choices, found)
     fields = _fields(part, state, found, columns, error)
     blamed = any(f.problem for f in fields)
     problem = "" if error is None or blamed or missing_words(error) else words.error_words(error)
-    done = part.stages[-1] in found.values
     unfolded = state.unfolded.get(part.name, part.name not in state.done_at_first)
     return PartShown(
         name=part.name,
         title=part.title,
         words=_words(part, state, found, error, blamed or bool(problem)),
         fields=fields,
-        unfolded=unfolded or bool(problem) or (blamed and not done),
+        unfolded=unfolded or blamed or bool(problem),
         more=state.more.get(part.name, False)
         or any(f.place == "more" and f.problem for f in fields),
         problem=problem,
         notes=words.notes_of(part.name, found),
     )
+
+
+def _error(part: Part, choices: Choices, found: Resolved) -> InputError | None:
+    """The first error of a part; none while it waits for an earlier one."""
+    first = next((found.errors[s] for s in part.stages if s in found.errors), None)
+    if first is not None:
+        try:
+            check(choices, part.tables)
+        except InputError as e:
+            return e
+    return first
 
 
 def _fields(
@@ -193,7 +207,7 @@ def _status(state: State, found: Resolved) -> Status:
     if "result" in found.values and state.answer is not None:
         return Status(state.answer.shown.headline)
     for part in PARTS:
-        error = next((found.errors[s] for s in part.stages if s in found.errors), None)
+        error = _error(part, state.choices, found)
         if error is not None:
             need = missing_words(error)
             if need:

@@ -64,9 +64,9 @@ def notes_of(part: str, found: Resolved) -> tuple[Note, ...]:
     record = found.get(stage) if stage else None
     out = []
     for title, name in (("Repairs", "repairs"), ("Cautions", "cautions")):
-        lines = tuple(str(x) for x in getattr(record, name, ()))
+        lines = tuple(_one(x) for x in getattr(record, name, ()))
         if stage == "trace":  # a trace carries the cautions of those before it
-            before = {str(x) for s in ("log", "channels") for x in getattr(found.get(s), name, ())}
+            before = {_one(x) for s in ("log", "channels") for x in getattr(found.get(s), name, ())}
             lines = tuple(x for x in lines if x not in before)
         if lines:
             cut = lines[:_MOST_NOTES]
@@ -75,12 +75,17 @@ def notes_of(part: str, found: Resolved) -> tuple[Note, ...]:
     return tuple(out)
 
 
+def _one(note: object) -> str:
+    """A caution is its words already; a repair holds them."""
+    return str(getattr(note, "words", note))
+
+
 def absent_words(name: str, found: Resolved) -> str:
     """Say what was found where a field is empty; nothing where nothing was."""
     log, channels = found.get("log"), found.get("channels")
     inner = name.rpartition(".")[2]
     if name.startswith("log.units.") and channels is not None:
-        unit = channels.units.get(inner)
+        unit = (channels.written or channels.units).get(inner)
         return f"found: {unit}" if unit else ""
     if name.startswith("log.read.") and log is not None:
         value = getattr(log.reading, inner, None)
@@ -174,7 +179,7 @@ def _log_words(_: Choices, found: Resolved) -> str:
 
 def _column_words(choices: Choices, found: Resolved) -> str:
     channels = found.get("channels")
-    units = channels.units
+    units = channels.written or channels.units
     span = float(channels.time_s[-1] - channels.time_s[0])
     return (
         f"{choices.log.time} over {figures(span)} s, {choices.log.signal} in "

@@ -51,6 +51,7 @@ class Workbench:
         self._page = Page(plain, _footer())
         self._presenter = Presenter(self._page, on_bug=self._page.guard.keep)
         self._page.on_refused = self._presenter.refuse
+        self._page.guard.on_error = self._presenter.say
         self._presenter.open(_path(source))
 
     @property

@@ -23,7 +23,7 @@ class Guard:
 
     def __init__(self, on_error: Callable[[str], None]) -> None:
         self.errors: list[str] = []
-        self._on_error = on_error
+        self.on_error = on_error
         self._quiet = 0
 
     def __call__(self, function: Callable[..., Any]) -> Callable[..., None]:
@@ -43,7 +43,7 @@ class Guard:
         """Keep an error's traceback and say it on the page."""
         self.errors.append("".join(traceback.format_exception(error)))
         what = " ".join(str(error).split())[:200]
-        self._on_error(
+        self.on_error(
             f"Something went wrong inside the program ({type(error).__name__}: {what}). Your "
             "choices are kept; go on, or save the run file. The details are in bench.errors."
         )

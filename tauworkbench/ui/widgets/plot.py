@@ -18,7 +18,7 @@ __all__ = ["Plot", "can_browse"]
 def can_browse() -> bool:
     """Return whether widgets with a part in the browser are to be had."""
     try:
-        from . import browser  # noqa: F401
+        import anywidget  # noqa: F401
     except ImportError:
         return False
     return True
