@@ -9,6 +9,8 @@ from .terminal import add_quiet, progress, say_cautions
 
 __all__ = ["arguments", "run"]
 
+_UNITS = {"s": "s", "c": "degC", "k": "K", "w": "W", "ohm": "ohm", "v": "V", "mm": "mm"}
+
 
 def arguments(parser: argparse.ArgumentParser) -> None:
     """Add this command's arguments."""
@@ -39,7 +41,7 @@ def _lines(found: dict[str, object], indent: str = "") -> list[str]:
     """Nested facts as indented lines; the same facts as ``--json`` gives."""
     out = []
     for name, value in found.items():
-        title = name.replace("_", " ")
+        title = _title(name)
         if isinstance(value, dict):
             out += [f"{indent}{title}", *_lines(value, indent + "  ")]
         elif isinstance(value, list) and value and isinstance(value[0], dict):
@@ -51,7 +53,14 @@ def _lines(found: dict[str, object], indent: str = "") -> list[str]:
 
 
 def _row(one: dict[str, object]) -> str:
-    return ", ".join(f"{k.replace('_', ' ')} {_text(v)}" for k, v in one.items())
+    return ", ".join(f"{_title(k)} {_text(v)}" for k, v in one.items())
+
+
+def _title(name: str) -> str:
+    """A key in words, its unit in brackets: ``window_s`` is ``window [s]``."""
+    head, _, unit = name.rpartition("_")
+    words = f"{head} [{_UNITS[unit]}]" if head and unit in _UNITS else name
+    return words.replace("_", " ")
 
 
 def _text(value: object) -> str:
@@ -60,5 +69,5 @@ def _text(value: object) -> str:
     if isinstance(value, float):
         return f"{value:.6g}"
     if isinstance(value, list):
-        return ", ".join(map(_text, value)) if value else "none"
+        return " to ".join(map(_text, value)) if value else "none"
     return str(value)

@@ -19,6 +19,7 @@ from ..units import convert
 from . import measuring
 from .checks import check
 from .choices import Choices
+from .keys import RUN_TABLES
 from .marker import Onset, marker_onset
 from .memory import Stage
 from .saved import RunResult
@@ -163,7 +164,7 @@ STAGES: tuple[Stage, ...] = (
     ),
     Stage(
         "result", ("log", "channels", "trace", "estimates"),
-        ("log", "reference", "circuit", "law", "test", "model", "recover"),
+        ("name", *RUN_TABLES),
         _result,
     ),
 )  # fmt: skip

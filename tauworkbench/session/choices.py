@@ -129,6 +129,8 @@ class Choices:
         What relative paths are relative to: the run file's folder.
     source : str
         The run file as it is named in messages; empty on the bench.
+    title : str
+        The run's name, where it isn't that of the file.
     """
 
     log: ChosenLog = field(default_factory=ChosenLog)
@@ -140,6 +142,7 @@ class Choices:
     recover: ChosenRecovery = field(default_factory=ChosenRecovery)
     folder: Path = field(default_factory=Path)
     source: str = ""
+    title: str = ""
 
     @classmethod
     def from_dict(cls, data: Mapping[str, Any], *, folder: Path, source: str = "") -> Choices:
@@ -186,7 +189,7 @@ class Choices:
     @property
     def name(self) -> str:
         """The run's name: its file's, without folder and suffix; the log's on the bench."""
-        return Path(self.source or self.log.file or "run").stem
+        return self.title or Path(self.source or self.log.file or "run").stem
 
     def where(self, table: str, name: str = "") -> str:
         """Return ``file [table] key`` for a message."""

@@ -78,6 +78,8 @@ class Key:
     @property
     def allowed(self) -> str:
         """What may stand there, in words."""
+        if self.name == "kind" and not self.words:
+            return " or ".join(map(toml_word, kinds(self.table)))
         parts = [_TAKES[self.takes]] if self.takes != "word" else []
         parts += [toml_word(w) for w in self.words]
         limits = [

@@ -27,6 +27,13 @@ if TYPE_CHECKING:
 __all__ = ["channels", "law", "law_files", "log", "roles_of", "trace"]
 
 Inputs = Mapping[str, Any]
+_PLACES = {
+    "time": "[log] time",
+    "signal": "[log] signal",
+    "reference": "[reference] column",
+    "marker": "[test] onset.column",
+    "speed": "[recover] speed",
+}
 _TABLE_COLUMNS = ("temperature_c", "resistance_ohm")
 
 
@@ -61,10 +68,13 @@ def channels(choices: Choices, inputs: Inputs, _watch: Watch) -> Channels:
     from ..logs import to_channels
 
     check(choices, ("log",))
+    roles = roles_of(choices)
+    for role, column in roles.items():
+        inputs["log"].column(column, _PLACES.get(role, f"[circuit] {role}"))
     units = dict(choices.log.units)
     if choices.reference.unit is not None:
         units["reference"] = choices.reference.unit
-    return to_channels(inputs["log"], roles_of(choices), units, object=choices.log.object)
+    return to_channels(inputs["log"], roles, units, object=choices.log.object)
 
 
 def law_files(choices: Choices) -> tuple[Path, ...]:

@@ -31,7 +31,8 @@ class Stage:
     needs : tuple of str
         The stages whose values it takes.
     reads : tuple of str
-        The slice of the choices that it reads: ``"law"`` for a table, ``"log.file"`` for a key.
+        The slice of the choices that it reads: ``"law"`` for a table, ``"log.file"`` for a key,
+        ``"name"`` for the run's name.
     function : callable
         ``function(choices, inputs, watch) -> value``. It may read no other choice, and it raises
         `InputError` with ``[table] key`` where a choice is to blame.
@@ -96,7 +97,7 @@ class Memory:
 
 def stage_key(stage: Stage, choices: Choices, keys: Mapping[str, str]) -> str:
     """Return an outcome's key: a hash of the slice read, the files' stamps, the inputs' keys."""
-    tree = choices.to_dict()
+    tree = {**choices.to_dict(), "name": choices.name}
     read = {name: _slice(tree, name) for name in stage.reads}
     stamps = [file_stamp(path) for path in stage.files(choices)]
     needed = [keys[name] for name in stage.needs]
@@ -116,4 +117,4 @@ def file_stamp(path: Path) -> list[Any]:
 def _slice(tree: Mapping[str, Any], name: str) -> Any:
     table, _, key = name.partition(".")
     values = tree.get(table)
-    return values if not key or values is None else values.get(key)
+    return values.get(key) if key and values is not None else values

@@ -140,7 +140,8 @@ def complete(
 def _walk(
     choices: Choices, memory: Memory, stages: Sequence[Stage], watch: Watch | None
 ) -> Resolved:
-    bare = replace(choices, source="")  # kept outcomes don't know under which name they were asked
+    # kept outcomes don't know under which name they were asked for
+    bare = replace(choices, source="", title=choices.name)
     keys: dict[str, str] = {}
     values: dict[str, Any] = {}
     errors: dict[str, InputError] = {}
