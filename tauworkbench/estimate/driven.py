@@ -272,8 +272,8 @@ def _check_explained(record: Record, reference: FloatArray, fits: list[Fitted]) 
     if rms > _UNEXPLAINED * before and rms > 3 * record.noise_k:
         raise EstimateError(
             "[model] input",
-            f"no lag model follows this record: the best leaves {rms:.3g} K rms of the {before:.3g} K "
-            f"to be explained, and the noise is {record.noise_k:.2g} K",
+            f"no lag model follows this record: the best leaves {rms:.3g} K rms of the "
+            f"{before:.3g} K to be explained, and the noise is {record.noise_k:.2g} K",
             "something else than the logged reference moved the sensor (it was shifted, say): "
             "choose a window in which the set-up stayed as it was",
             {"rms_k": rms, "difference_k": before},

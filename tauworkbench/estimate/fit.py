@@ -18,6 +18,7 @@ from .budget import Part, budget_of
 from .candidates import Fitted, fit_candidates
 from .choice import Choice, choose
 from .derived import RESPONSES, derive
+from .direct import direct_readings, disagreements
 from .driven import fit_driven, whole_record
 from .final import final_least_squares
 from .record import Estimate
@@ -115,10 +116,16 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
     choice = choose(record, fits, settings)
     fitted, found = choice.fitted, choice.quantities
     cautions = more + reservations(record, fitted, found, choice.noise, settings, trace.reader)
+    summary = _step_summary(step, settings, choice)
+    direct = None
+    if summary.onset_s is not None and not settings.transfer_s:
+        direct = direct_readings(record, summary.onset_s, choice.scale)
+    cautions += tuple(disagreements(direct, found, fitted.form.poles))
     names, covariance = _covariance(choice)
     predict, band = _curves(choice)
     return Estimate(
-        step=_step_summary(step, settings, choice),
+        step=summary,
+        direct=direct,
         fit=_fit_summary(settings, choice),
         transfer=fitted.transfer,
         trace=trace,
