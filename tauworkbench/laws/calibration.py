@@ -13,10 +13,12 @@ from ..fitting.least_squares import trust_region
 from ..records import FloatArray
 from .base import KELVIN, Law
 from .platinum import Platinum
-from .table import Table
+from .table import Table, points_of
 from .thermistor import Beta, FourTerm, SteinhartHart, ThreeParameter
 
 __all__ = ["Calibrated", "calibrate"]
+
+_SCATTER_K = 1.0  # points nearer to each other than this may come in any order
 
 
 @dataclass(frozen=True, eq=False)
@@ -87,15 +89,16 @@ def calibrate(
         One of the law classes.
     temperature_c, resistance_ohm : array_like, shape (n,)
         [degC], [ohm]; with as many points as the law has coefficients it goes through them.
+        Repeated and scattered points are welcome, but not to a `Table`.
 
     Raises
     ------
     InputError
         Too few points, or points that no such law fits.
     """
-    t, r = np.asarray(temperature_c, float), np.asarray(resistance_ohm, float)
-    table = Table(t, r)  # the same checks: finite, positive, monotonic
+    t, r = points_of(temperature_c, resistance_ohm)
     if kind is Table:
+        table = Table(t, r)
         return Calibrated(table, np.zeros((0, 0)), np.zeros(t.size), table.valid_c or (0.0, 0.0))
     need = len(kind.fitted)
     if t.size < need:
@@ -104,12 +107,35 @@ def calibrate(
             f"{t.size} points, and this law has {need} coefficients",
             f"give at least {need} points",
         )
+    _check_direction(t, r)
     try:
-        return _fitted(_STARTS[kind](t, r), t, r)
+        found = _fitted(_STARTS[kind](t, r), t, r)
     except (ValueError, np.linalg.LinAlgError, FloatingPointError) as error:
         raise InputError(
             "[law] points", f"no such law goes through these points ({error})", "check the points"
         ) from error
+    middle = found.slope_k_per_ohm(np.array([np.median(r)]))[0]
+    if not middle * (r[np.argmax(t)] - r[np.argmin(t)]) > 0:
+        what = "the resistance goes the other way with temperature than in this law"
+        raise InputError("[law] points", what, "check the points' columns and the kind of law")
+    return found
+
+
+def _check_direction(t: FloatArray, r: FloatArray) -> None:
+    """Refuse a resistance that turns back between points more than a kelvin apart."""
+    order = np.argsort(t)
+    t, r = t[order], r[order]
+    rising = r * np.sign(r[-1] - r[0])
+    before = np.searchsorted(t, t - _SCATTER_K) - 1
+    highest = np.maximum.accumulate(rising)[np.maximum(before, 0)]
+    wrong = (before >= 0) & (rising <= highest)
+    if wrong.any() or r[0] == r[-1]:
+        k = int(np.argmax(wrong))
+        raise InputError(
+            "[law] points",
+            f"the resistance turns back by {t[k]:g} degC ({r[k]:g} ohm)",
+            "mend or leave out that point",
+        )
 
 
 def _fitted(first: Law, t: FloatArray, r: FloatArray) -> Calibrated:

@@ -38,15 +38,7 @@ class Table(Law):
     _curves: tuple[Any, Any] = field(init=False, repr=False)
 
     def __post_init__(self) -> None:
-        celsius, ohm = np.asarray(self.celsius, float), np.asarray(self.ohm, float)
-        if celsius.ndim != 1 or celsius.shape != ohm.shape or celsius.size < 2:
-            raise refuse(
-                "file",
-                f"the table has {celsius.size} temperatures and {ohm.size} resistances",
-                "give at least 2 rows of temperature_c and resistance_ohm",
-            )
-        if not (np.isfinite(celsius).all() and np.isfinite(ohm).all() and (ohm > 0).all()):
-            raise refuse("file", "the table holds a value that can't be", "give degC and ohms > 0")
+        celsius, ohm = points_of(self.celsius, self.ohm)
         order = np.argsort(celsius)
         celsius, ohm = celsius[order], ohm[order]
         _check_monotonic(celsius, ohm)
@@ -85,6 +77,24 @@ class Table(Law):
         x = np.log(np.where(resistance > 0, resistance, np.nan))
         curve = self._curves[0]
         return np.asarray(-curve.derivative()(x) / curve(x) ** 2 / resistance)
+
+
+def points_of(celsius: ArrayLike, ohm: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Return at least two temperatures [degC] and resistances [ohm] that can be."""
+    how = "give at least 2 rows of temperature_c and resistance_ohm"
+    try:
+        t, r = np.asarray(celsius, float), np.asarray(ohm, float)
+    except (TypeError, ValueError):
+        raise refuse("file", "the table holds something that is no number", how) from None
+    if t.ndim != 1 or t.shape != r.shape or t.size < 2:
+        what = f"the table has {t.size} temperatures and {r.size} resistances"
+        raise refuse("file", what, how)
+    good = np.isfinite(t) & (t > -KELVIN) & np.isfinite(r) & (r > 0)
+    if not good.all():
+        row = int(np.argmin(good))
+        what = f"the table holds a value that can't be ({t[row]:g} degC, {r[row]:g} ohm)"
+        raise refuse("file", what, "give degC and ohms > 0")
+    return t, r
 
 
 def _check_monotonic(celsius: FloatArray, ohm: FloatArray) -> None:

@@ -108,6 +108,19 @@ def test_covariance_tells_the_scatter_of_refits():
     assert together == pytest.approx(found.standard_uncertainty_k(at), rel=1e-9)
 
 
+def test_repeated_and_scattered_points_serve():
+    """Up and down again through the same temperatures, as calibration baths are run."""
+    law, rng = SteinhartHart(1.4e-3, 2.37e-4, 9.9e-8), np.random.default_rng(5)
+    t = np.concatenate([np.arange(0, 81, 10.0), np.arange(80, -1, -10.0)])
+    r = law.ohm_at(t + rng.normal(0, 0.02, t.size))
+    found = calibrate(SteinhartHart, t, r)
+    at = law.ohm_at(np.linspace(0, 80, 30))
+    off = (found.celsius_at(at) - law.celsius_at(at)) / found.standard_uncertainty_k(at)
+    assert np.abs(off).max() < 4
+    with pytest.raises(InputError, match="stands twice"):
+        calibrate(Table, t, r)
+
+
 def test_gum_h3_fitted_line_has_its_uncertainty():
     """JCGM 100 H.3, thermometer calibration: coefficients, their sd and correlation, and the
     prediction at 30 degC (recomputed; the printed, rounded ones from memory)."""
@@ -133,6 +146,10 @@ def test_gum_h3_fitted_line_has_its_uncertainty():
         (SteinhartHart, [0, 25], [3e4, 1e4], "2 points.*3 coefficients"),
         (Beta, [0, 25, 50], [3e4, 1e4, 2e4], "turns back"),
         (Beta, [0, 25, 50], [1e4, 2e4, 3e4], "no such law"),
+        (Platinum, [0, 50, 100], [138.0, 119.4, 100.0], "other way"),
+        (Beta, [25, 25], [1e4, 1e4], "turns back"),
+        (Beta, [0, 25], ["x", 1e4], "no number"),
+        (Beta, [-300, 25], [3e4, 1e4], "can't be"),
         (Table, [0, 25], [1e4, float("nan")], "can't be"),
     ],
 )
