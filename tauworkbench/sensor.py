@@ -162,6 +162,8 @@ def _rows(rows: ArrayLike | None, n: int) -> RowNumbers | None:
 
 
 def _law(circuit: Circuit, law: ResistanceLaw | None) -> ResistanceLaw:
+    if not isinstance(circuit, Circuit):
+        raise InputError("circuit", f"{circuit!r:.60} is none", "give one, such as Divider(...)")
     if circuit.gives == "degC":
         if law is not None:
             what = "a thermometer's signal is a temperature and needs no law"
@@ -169,6 +171,8 @@ def _law(circuit: Circuit, law: ResistanceLaw | None) -> ResistanceLaw:
         return _AsLogged()
     if law is None:
         raise InputError("law", "is missing", "give the sensor's resistance law, such as Beta(...)")
+    if not hasattr(law, "celsius_at"):
+        raise InputError("law", f"{law!r:.60} is none", "give one, such as Beta(...)")
     return law
 
 
@@ -182,7 +186,8 @@ def _sigma(
 ) -> FloatArray | None:
     """Standard uncertainty of each sample that has a value, in the signal's unit."""
     if noise_u is not None:
-        if not (np.isfinite(noise_u) and noise_u > 0):
+        number = isinstance(noise_u, int | float | np.number) and not isinstance(noise_u, bool)
+        if not (number and np.isfinite(noise_u) and noise_u > 0):
             raise InputError("noise_u", f"{noise_u!r} can't stand there", "give a number above 0")
         return np.full(y.size, float(noise_u))
     known, levels = np.where(np.isfinite(value), y, np.nan), None
