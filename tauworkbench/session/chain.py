@@ -45,8 +45,9 @@ def _onset(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> Onset:
     check(choices, ("onset",))
     if test.onset is not None:
         found = inputs["channels"]
-        # the level is in the unit that the column was written in
-        marker = convert(found.values["marker"], found.units["marker"], found.written["marker"])
+        marker, unit, written = (x["marker"] for x in (found.values, found.units, found.written))
+        if unit != written:  # the level is in the unit that the column was written in
+            marker = convert(marker, unit, written)
         return marker_onset(found.time_s, marker, test.onset, test.window_s)
     if test.onset_s is None:
         return Onset()
@@ -137,22 +138,25 @@ _ELECTRICAL = ("circuit", "law", "reference")
 _ONSET = ("test.onset_s", "test.onset", "test.window_s")
 STAGES: tuple[Stage, ...] = (
     Stage(
-        "log", (), ("log.file", "log.object", "log.read"), measuring.log,
+        "log", (), ("log.file", "log.read"), measuring.log,
         files=_log_file, costly=_is_large,
     ),
     Stage(
         "channels", ("log",),
         ("log.time", "log.signal", "log.units", "circuit.supply", "circuit.current",
          "circuit.counts", "circuit.kind", "reference.column", "reference.unit", "test.onset",
-         "recover.speed"),
+         "recover.speed", "log.object"),
         measuring.channels,
         files=_log_file,
+        costly=_is_large,
     ),
     Stage("law", (), ("law", "circuit.kind"), measuring.law, files=measuring.law_files),
     Stage(
         "trace", ("channels", "law"),
-        (*_ELECTRICAL, "log.noise_u", "log.averaging_s", "log.filter_s"),
+        (*_ELECTRICAL, "log.noise_u", "log.averaging_s", "log.filter_s",
+         "test.dissipation", "test.dissipation_mw_per_k"),
         measuring.trace,
+        files=measuring.trace_files,
     ),
     Stage("onset", ("channels",), _ONSET, _onset),
     Stage("steps", ("trace", "onset"), _ONSET, _steps),

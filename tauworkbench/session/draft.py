@@ -58,11 +58,7 @@ def draft(log: Log) -> str:
 
 
 def _found(log: Log) -> list[str]:
-    lines = ["Found:", *(f"  {words}" for words in log.describe()), "Columns:"]
-    for column in log.columns:
-        unit = f"[{column.unit}]" if column.unit else "(unit not stated)"
-        lines.append(f"  {column.number}  {column.short_name or column.name} {unit}")
-    return lines
+    return ["Found:", *(f"  {words}" for words in log.describe())]
 
 
 def _guesses(log: Log) -> dict[tuple[str, str], _Guess]:
@@ -77,7 +73,7 @@ def _guesses(log: Log) -> dict[tuple[str, str], _Guess]:
     if circuit:
         out["circuit", "kind"] = _Guess(_toml(circuit), f"GUESS from the unit {signal.unit}.")
     units = {"signal": "mV"} if not signal.unit else {}
-    if not time.unit and np.isfinite(log.numbers(time.number)).any():  # a stamp needs no unit
+    if not time.unit and time.kind == "number":
         units = {"time": "s", **units}
     if units:
         pairs = ", ".join(f'{role} = "{unit}"' for role, unit in units.items())
@@ -89,17 +85,19 @@ def _guesses(log: Log) -> dict[tuple[str, str], _Guess]:
 def guess_time(log: Log) -> Column:
     """Return the column that most likely holds the time.
 
-    One with a unit of time; else one whose name says so; else the first that always grows.
+    One with a unit of time or with time stamps; else one whose name says so; else the first that
+    always grows.
     """
+    stamps = (c for c in log.columns if c.kind == "stamp")
     named = (c for c in log.columns if _TIME_WORDS.search(c.short_name))
     growing = (c for c in log.columns if _grows(log, c))
-    return next(chain(_of(log.columns, "time"), named, growing, log.columns))
+    return next(chain(_of(log.columns, "time"), stamps, named, growing, log.columns))
 
 
 def guess_signal(log: Log) -> Column:
     """Return the column that most likely holds the signal, the time apart."""
     time = guess_time(log)
-    others = [c for c in log.columns if c is not time]
+    others = [c for c in log.columns if c is not time and c.kind == "number"]
     return next(chain(*(_of(others, d) for d in _SIGNALS), others, (time,)))
 
 
@@ -108,6 +106,8 @@ def _of(columns: Sequence[Column], wanted: str) -> Iterator[Column]:
 
 
 def _grows(log: Log, column: Column) -> bool:
+    if column.kind != "number":
+        return False
     values = log.numbers(column.number)
     return bool(values.size > 1 and np.all(np.diff(values[np.isfinite(values)]) > 0))
 

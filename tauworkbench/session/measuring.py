@@ -18,22 +18,16 @@ from ..records import FloatArray, Reader, Trace
 from .checks import check
 from .choices import Choices, ChosenKind
 from .keys import kinds
+from .saved import read_results
 
 if TYPE_CHECKING:
     from ..circuits import Circuit
     from ..laws import Calibrated, Law
     from ..logs import Channels, Log
 
-__all__ = ["channels", "law", "law_files", "log", "roles_of", "trace"]
+__all__ = ["channels", "law", "law_files", "log", "roles_of", "trace", "trace_files"]
 
 Inputs = Mapping[str, Any]
-_PLACES = {
-    "time": "[log] time",
-    "signal": "[log] signal",
-    "reference": "[reference] column",
-    "marker": "[test] onset.column",
-    "speed": "[recover] speed",
-}
 _TABLE_COLUMNS = ("temperature_c", "resistance_ohm")
 
 
@@ -63,18 +57,17 @@ def roles_of(choices: Choices) -> dict[str, str]:
     return {role: column for role, column in found.items() if column is not None}
 
 
-def channels(choices: Choices, inputs: Inputs, _watch: Watch) -> Channels:
+def channels(choices: Choices, inputs: Inputs, watch: Watch) -> Channels:
     """Take the columns in use as numbers in one unit each, on one time base."""
     from ..logs import to_channels
 
     check(choices, ("log",))
-    roles = roles_of(choices)
-    for role, column in roles.items():
-        inputs["log"].column(column, _PLACES.get(role, f"[circuit] {role}"))
     units = dict(choices.log.units)
     if choices.reference.unit is not None:
         units["reference"] = choices.reference.unit
-    return to_channels(inputs["log"], roles, units, object=choices.log.object)
+    return to_channels(
+        inputs["log"], roles_of(choices), units, object=choices.log.object, watch=watch
+    )
 
 
 def law_files(choices: Choices) -> tuple[Path, ...]:
@@ -103,7 +96,7 @@ def trace(choices: Choices, inputs: Inputs, watch: Watch) -> Trace:
     _check_unit(circuit, found.units["signal"], "[log] signal")
     reference_c, cautions = _reference(choices, found, watch)
     chosen = choices.log
-    return to_temperature(
+    out = to_temperature(
         found.time_s,
         values["signal"],
         circuit=circuit,
@@ -120,6 +113,33 @@ def trace(choices: Choices, inputs: Inputs, watch: Watch) -> Trace:
         rows=found.rows,
         cautions=(*found.cautions, *cautions),
     )
+    return out.but(cautions=(*out.cautions, *_own_heating(choices, out)))
+
+
+def trace_files(choices: Choices) -> tuple[Path, ...]:
+    """Return the files beside the log that the trace is made from."""
+    measured = choices.test.dissipation
+    return law_files(choices) + (() if measured is None else (choices.path(measured),))
+
+
+def _own_heating(choices: Choices, found: Trace) -> tuple[str, ...]:
+    """Say how much the measuring current warms the sensor, where the dissipation is known."""
+    test, power = choices.test, found.power_w
+    mw_per_k = test.dissipation_mw_per_k
+    if test.dissipation is not None:
+        measured = read_results(choices.path(test.dissipation))[0].dissipation.get("mw_per_k")
+        if measured is None:
+            what = "that result holds no dissipation constant"
+            raise InputError("[test] dissipation", what, "give the result of a self-heating run")
+        mw_per_k = measured.value
+    if mw_per_k is None or power is None or not found.kept.any():
+        return ()
+    warmer = 1e3 * power[found.kept] / mw_per_k
+    words = (
+        f"the measuring current warms the sensor by {warmer.min():.2g} to {warmer.max():.2g} K at "
+        f"{mw_per_k:.3g} mW/K; temperatures are the sensor's own, with that in them"
+    )
+    return (words,)
 
 
 def _reference(

@@ -19,6 +19,8 @@ from .stages import Resolved, complete
 
 __all__ = ["overview"]
 
+_NO_UNIT = {"number": "not stated", "stamp": "time stamps", "text": "text"}
+
 
 def overview(path: str | os.PathLike[str], watch: Watch = SILENT) -> dict[str, Any]:
     """Read everything that a run file names and say what was understood; fit nothing.
@@ -62,7 +64,7 @@ def _log(log: Log, choices: Choices) -> dict[str, Any]:
         "time": choices.log.time,
         "signal": choices.log.signal,
         "columns": [
-            {"number": c.number, "name": c.short_name or c.name, "unit": c.unit or "not stated"}
+            {"number": c.number, "name": c.short_name, "unit": c.unit or _NO_UNIT[c.kind]}
             for c in log.columns
         ],
     }

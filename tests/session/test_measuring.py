@@ -19,14 +19,19 @@ CELSIUS = 1 / (1 / (25.0 + KELVIN) + np.log(OHM / 1e4) / 3950.0) - KELVIN
 
 
 def trace_of(
-    folder: Path, columns: dict[str, np.ndarray], circuit: str, law: str = LAW, log: str = ""
+    folder: Path,
+    columns: dict[str, np.ndarray],
+    circuit: str,
+    law: str = LAW,
+    log: str = "",
+    test: str = "",
 ):
     rows = np.stack([TIME, *columns.values()], axis=1)
     lines = [",".join(["t [s]", *columns]), *(",".join(f"{x:.9g}" for x in r) for r in rows)]
     (folder / "log.csv").write_text("\n".join(lines) + "\n")
     (folder / "run.toml").write_text(
         f"[log]\nfile = 'log.csv'\ntime = 't'\nsignal = 'y'\n{log}\n"
-        f"[circuit]\n{circuit}\n{law}\n[test]\nkind = 'plunge'\n"
+        f"[circuit]\n{circuit}\n{law}\n[test]\nkind = 'plunge'\n{test}\n"
     )
     return to_trace(read_run(folder / "run.toml"))
 
@@ -147,3 +152,10 @@ def test_points_that_are_no_numbers_are_refused(tmp_path):
     (tmp_path / "rt.csv").write_text("temperature_c,resistance_ohm\n20,1000\n30,x\n40,800\n")
     with pytest.raises(InputError, match="resistance_ohm"):
         trace_of(tmp_path, {"y [ohm]": OHM}, "kind = 'ohms'", "[law]\nkind='table'\nfile='rt.csv'")
+
+
+def test_the_measuring_currents_own_heating_is_said(tmp_path):
+    circuit, test = "kind = 'current'\ncurrent = 1e-4", "dissipation_mw_per_k = 2.0"
+    trace = trace_of(tmp_path, {"y [V]": OHM * 1e-4}, circuit, test=test)
+    # I^2 R = 1e-8 A^2 * 9 to 11 kohm = 0.09 to 0.11 mW, over 2 mW/K
+    assert any("0.045 to 0.055 K at 2 mW/K" in c for c in trace.cautions)

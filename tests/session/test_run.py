@@ -83,7 +83,7 @@ def test_the_window_and_a_given_onset_reach_the_fit(run_file):
         ("onset_s = 500.0\n", "[test] onset_s", "after the onset"),
         ("steps = 7\n", "[test] steps", "step 7"),
         ("onset = { column = 'contact', level = 99.0 }\n", "[test] onset", "no rising edge"),
-        ("onset = { column = 'light', level = 2.5 }\n", "[test] onset.column", "light"),
+        ("onset = { column = 'light', level = 2.5 }\n", "[test] onset", "light"),
         ("[model]\ndead_time = true\n", "[model] dead_time", "onset"),
     ],
 )
