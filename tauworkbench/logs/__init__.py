@@ -1,7 +1,10 @@
 """From a logger's file to channels on a time base."""
 
-from .reading import read_log
-from .record import Channels, Column, Log, Reading, Repair
-from .timebase import to_channels
+from __future__ import annotations
+
+from .channels import to_channels
+from .log import Log
+from .read import read_log
+from .records import Channels, Column, Reading, Repair
 
 __all__ = ["Channels", "Column", "Log", "Reading", "Repair", "read_log", "to_channels"]

@@ -1,0 +1,79 @@
+"""A log's bytes: refused when they are no text, else their encoding."""
+
+from __future__ import annotations
+
+import codecs
+
+from ..errors import InputError
+from .dialects import BOMS, ENCODINGS, FOREIGN, TRADE_LETTERS
+
+__all__ = ["encoding_of"]
+
+
+def encoding_of(head: bytes, given: str | None, where: str) -> str:
+    """Return the name of the encoding of a text that starts with these bytes.
+
+    Raises
+    ------
+    InputError
+        Where the bytes are no text, or ``given`` is no encoding.
+    """
+    for start, what, how in FOREIGN:
+        if head.startswith(start):
+            raise InputError(where, what, how)
+    if given is not None:
+        return _known(given, where)
+    for mark, name in BOMS:
+        if head.startswith(mark):
+            return name
+    if b"\0" in head:
+        return _wide(head, where)
+    if _is_utf8(head):
+        return "utf-8"
+    for name in ENCODINGS:
+        text = head.decode(name, "replace")
+        if {c for c in text if not c.isascii()} <= TRADE_LETTERS:
+            return name
+    return _asked(head)
+
+
+def _known(given: str, where: str) -> str:
+    try:
+        name = codecs.lookup(given).name
+        if not isinstance("a".encode(name), bytes) or b"1".decode(name) != "1":
+            raise LookupError(given)
+    except UnicodeError:
+        return codecs.lookup(given).name  # a wide encoding: one byte alone is no text
+    except (LookupError, ValueError, TypeError, AssertionError):
+        how = 'give one such as "utf-8", "latin-1" or "utf-16"'
+        raise InputError(where, f'"{given}" is no text encoding', how) from None
+    return name
+
+
+def _wide(head: bytes, where: str) -> str:
+    """UTF-16 without a mark: every other byte of plain text is zero."""
+    pairs = len(head) // 2
+    for name, offset in (("utf-16-le", 1), ("utf-16-be", 0)):
+        if head[offset : 2 * pairs : 2].count(0) > 0.9 * pairs and (
+            head[1 - offset : 2 * pairs : 2].count(0) == 0
+        ):
+            return name
+    raise InputError(where, "is binary, not text", "give the log as CSV, Excel or Parquet")
+
+
+def _is_utf8(head: bytes) -> bool:
+    """Whether it is UTF-8; the last letter may be cut."""
+    try:
+        codecs.getincrementaldecoder("utf-8")().decode(head, final=False)
+    except UnicodeDecodeError:
+        return False
+    return True
+
+
+def _asked(head: bytes) -> str:
+    from charset_normalizer import from_bytes
+
+    # Only bytes beyond ASCII tell; a few lines that hold them are quick to try.
+    lines = [line for line in head.splitlines() if not line.isascii()][:50]
+    best = from_bytes(b"\n".join(lines)).best()
+    return "cp1252" if best is None else best.encoding

@@ -1,0 +1,81 @@
+"""Fields as numbers: what is missing, what can't be read."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from .records import FloatArray
+
+__all__ = ["Numbers", "to_numbers"]
+
+# What Arrow is asked to read as a number; RE2.
+_NUMBER = r"^[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?$"
+
+
+@dataclass
+class Numbers:
+    """Values (NaN where there is none), and how many fields were neither number nor missing."""
+
+    values: FloatArray
+    unreadable: int = 0
+    example: str = ""
+
+
+def to_numbers(column: Any, decimal: str, missing: Sequence[str]) -> Numbers:
+    """Return an Arrow column as numbers."""
+    import pyarrow as pa
+    import pyarrow.compute as pc
+
+    if not (pa.types.is_string(column.type) or pa.types.is_large_string(column.type)):
+        return Numbers(_typed(column))
+    texts = pc.replace_substring(column, ",", ".") if decimal == "," else column
+    given = _as_numbers(missing, decimal)
+    try:
+        values = _finite(pc.cast(texts, pa.float64()))
+        if given.size:
+            values[np.isin(values, given)] = np.nan
+        return Numbers(values)
+    except pa.ArrowInvalid:
+        pass  # some field is no number
+    texts = pc.utf8_trim(texts, " \t\xa0'\"")
+    good = pc.match_substring_regex(texts, _NUMBER)
+    values = _finite(pc.cast(pc.if_else(good, texts, pa.scalar(None, pa.string())), pa.float64()))
+    markers = pa.array(["", *(m.replace(",", ".") for m in missing)], pa.string())
+    strange = pc.invert(pc.or_(good, pc.is_in(pc.utf8_lower(texts), value_set=markers)))
+    count = int(pc.sum(strange).as_py() or 0)
+    example = str(column.filter(strange)[0].as_py())[:40] if count else ""
+    if given.size:
+        values[np.isin(values, given)] = np.nan
+    return Numbers(values, count, example)
+
+
+def _as_numbers(missing: Sequence[str], decimal: str) -> FloatArray:
+    """Return those markers that are numbers, so that -999 also means -999.00."""
+    out = []
+    for text in missing:
+        try:
+            out.append(float(text.replace(decimal, ".")))
+        except ValueError:
+            continue
+    return np.array([x for x in out if np.isfinite(x)])
+
+
+def _typed(column: Any) -> FloatArray:
+    """A column that already has a type; whatever is no number is missing."""
+    import pyarrow as pa
+    import pyarrow.compute as pc
+
+    try:
+        return _finite(pc.cast(column, pa.float64(), safe=False))
+    except (pa.ArrowInvalid, pa.ArrowNotImplementedError):
+        return np.full(len(column), np.nan)
+
+
+def _finite(column: Any) -> FloatArray:
+    values = np.array(column.to_numpy(zero_copy_only=False), dtype=float)
+    values[~np.isfinite(values)] = np.nan
+    return values
