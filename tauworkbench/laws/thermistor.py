@@ -12,6 +12,7 @@ kelvin over 75 K (0.46 K at most on the NIST MGH10 points; measured in the tests
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import ClassVar
 
 import numpy as np
@@ -112,13 +113,13 @@ class Beta(Law):
 
 
 class _Polynomial(Law):
-    """1/T as a polynomial of ln R: ``powers`` of it, in the order of ``fitted``."""
+    """1/T as a polynomial of ln R, cubic at most: ``powers`` of it, in the order of ``fitted``."""
 
     powers: ClassVar[tuple[int, ...]] = ()
 
     def check(self) -> None:
         """Refuse coefficients that give no falling resistance anywhere."""
-        low, high = self._rising()
+        low, high = self._rising
         if high - low < 1.0:
             words = ", ".join(f"{n} = {getattr(self, n):g}" for n in self.fitted)
             raise refuse(
@@ -127,16 +128,15 @@ class _Polynomial(Law):
                 "give the coefficients for natural logarithms of ohms, 1/T in 1/K",
             )
 
-    def _terms(self) -> list[tuple[float, int]]:
-        return [(getattr(self, n), p) for n, p in zip(self.fitted, self.powers, strict=True)]
-
     def _inverse(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """1/T [1/K] and its slope over ln R."""
-        terms = self._terms()
-        value = sum((k * x**p for k, p in terms), np.zeros_like(x))
-        slope = sum((k * p * x ** (p - 1) for k, p in terms if p), np.zeros_like(x))
+        """1/T [1/K] and its slope over ln R; by Horner, powers of whole arrays are slow."""
+        k = dict(zip(self.powers, (getattr(self, n) for n in self.fitted), strict=True))
+        k0, k1, k2, k3 = (k.get(p, 0.0) for p in range(4))
+        value = ((k3 * x + k2) * x + k1) * x + k0
+        slope = (3 * k3 * x + 2 * k2) * x + k1
         return np.asarray(value), np.asarray(slope)
 
+    @cached_property
     def _rising(self) -> tuple[float, float]:
         """Widest stretch of ln R in which 1/T rises and is positive."""
         x = np.linspace(_LN_LOW, _LN_HIGH, 4001)
@@ -151,14 +151,14 @@ class _Polynomial(Law):
     def celsius_at(self, resistance_ohm: ArrayLike) -> FloatArray:
         """Temperature [degC]; nan outside the stretch in which resistance falls with it."""
         x = _log(resistance_ohm)
-        low, high = self._rising()
+        low, high = self._rising
         inside = np.where((x >= low - 1e-9) & (x <= high + 1e-9), x, np.nan)
         return _celsius(self._inverse(inside)[0])
 
     def ohm_at(self, temperature_c: ArrayLike) -> FloatArray:
         """Resistance [ohm], by Newton inside a bracket."""
         target = np.atleast_1d(_inverse_kelvin(temperature_c))
-        low, high = self._rising()
+        low, high = self._rising
         guess = np.full(target.shape, np.clip(np.log(1e4), low, high))
         x = increasing_root(self._inverse, target.ravel(), low, high, guess.ravel())
         return np.asarray(np.exp(x).reshape(np.shape(temperature_c)))
