@@ -11,13 +11,12 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from ..errors import InputError
 from ..progress import Watch
 from ..records import Step
 from ..result import QUANTITY, Provenance, RunInfo
 from ..units import convert
 from . import measuring
-from .checks import check
+from .checks import check, check_fitted
 from .choices import Choices
 from .keys import RUN_TABLES
 from .marker import Onset, marker_onset
@@ -27,7 +26,6 @@ from .saved import RunResult
 __all__ = ["STAGES"]
 
 _LARGE_BYTES = 20_000_000  # a log above this takes a second or more to read
-_FITTED = ("plunge", "air-step")
 _CONDITIONS = (
     "immersion_mm",
     "medium_c",
@@ -64,11 +62,7 @@ def _steps(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> tuple[
 def _estimates(choices: Choices, inputs: Mapping[str, Any], watch: Watch) -> tuple[Any, ...]:
     check(choices, ("test", "model"))
     test, model, onset = choices.test, choices.model, inputs["onset"]
-    if test.kind not in _FITTED:
-        how = f"the kinds that can be fitted are {', '.join(_FITTED)}"
-        if test.kind == "field":
-            how = "a field log has no step to fit; give the log of a plunge or an air step"
-        raise InputError("[test] kind", f'"{test.kind}" has no step response to fit', how)
+    check_fitted(choices)
     from ..estimate.fit import FitSettings, fit_steps
 
     settings = FitSettings(

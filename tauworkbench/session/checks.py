@@ -11,7 +11,9 @@ from ..errors import InputError
 from .choices import Choices, ChosenKind, ChosenReference, keys_taken
 from .keys import key, keys_of
 
-__all__ = ["check"]
+__all__ = ["check", "check_fitted"]
+
+_FITTED = ("plunge", "air-step")
 
 
 def check(choices: Choices, parts: Iterable[str] | None = None) -> None:
@@ -31,6 +33,20 @@ def check(choices: Choices, parts: Iterable[str] | None = None) -> None:
     """
     for part in _CHECKS if parts is None else parts:
         _CHECKS[part](choices)
+
+
+def check_fitted(choices: Choices) -> None:
+    """Refuse a kind of test whose response can't be fitted.
+
+    Raises
+    ------
+    InputError
+        With ``file [test] kind``.
+    """
+    if choices.test.kind not in _FITTED:
+        what = f'"{choices.test.kind}" is no kind of test that can be fitted'
+        how = f"give a log of one of the kinds {' and '.join(_FITTED)}"
+        raise InputError(choices.where("test", "kind"), what, how)
 
 
 def _check_log(choices: Choices) -> None:

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 from ..logs import Log
 from ..progress import SILENT, Watch
 from ..records import Trace
+from .checks import check_fitted
 from .choices import Choices
 from .memory import Memory
 from .run_file import read_choices
@@ -51,10 +52,7 @@ def read_run(path: str | os.PathLike[str], *, watch: Watch = SILENT) -> Run:
     InputError
         Where either can't be used.
     """
-    choices = read_choices(path)
-    memory = Memory()
-    log = complete(choices, watch, memory, last="log").need("log")
-    return Run(choices, log, memory)
+    return _read(read_choices(path), watch)
 
 
 def to_trace(run: Run, *, watch: Watch = SILENT) -> Trace:
@@ -91,7 +89,14 @@ def fit(run: Run | str | os.PathLike[str], *, watch: Watch = SILENT) -> RunResul
     EstimateError
         Where the data can't answer.
     """
+    choices = run.choices if isinstance(run, Run) else read_choices(run)
+    check_fitted(choices)
     if not isinstance(run, Run):
-        run = read_run(run, watch=watch)
+        run = _read(choices, watch)
     result: RunResult = complete(run.choices, watch, run.memory).need("result")
     return result
+
+
+def _read(choices: Choices, watch: Watch) -> Run:
+    memory = Memory()
+    return Run(choices, complete(choices, watch, memory, last="log").need("log"), memory)

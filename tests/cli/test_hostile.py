@@ -83,7 +83,7 @@ def judge(command: str, content: bytes) -> None:
         assert written == []
 
 
-@settings(max_examples=150)
+@settings(max_examples=100)
 @given(mutations())
 def test_a_changed_run_file_is_checked_or_refused_in_one_line(content):
     judge("check", content)
