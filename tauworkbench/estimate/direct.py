@@ -14,7 +14,7 @@ import numpy as np
 from ..records import Direct, FloatArray
 from ..uncertainty import Quantity
 from .derived import RESPONSES
-from .intervals import Scale
+from .residuals import correlation_sum
 from .starts import Record
 
 __all__ = ["direct_readings", "disagreements"]
@@ -23,6 +23,7 @@ _READ = ("50", "63.2", "90")
 # How far the last fifth of the record may still move, as a share of the step, to count as settled.
 _SETTLED = 0.005
 _LEAST = 6
+_ENOUGH = 40  # samples from which their own scatter says more than the record's noise
 # t90 / t50 of one pole: ln 10 / ln 2.
 ONE_POLE_RATIO = np.log(10) / np.log(2)
 
@@ -33,7 +34,7 @@ class _Level:
     standard_uncertainty: float
 
 
-def direct_readings(record: Record, onset: Quantity, scale: Scale) -> Direct | None:
+def direct_readings(record: Record, onset: Quantity, quantile: float) -> Direct | None:
     """Read the 50, 63.2 and 90 % times; None where the record has no two flat ends.
 
     Parameters
@@ -47,7 +48,7 @@ def direct_readings(record: Record, onset: Quantity, scale: Scale) -> Direct | N
         Times after the onset. With a found onset they share its bias: too short for a distributed
         sensor.
     """
-    ends = _ends(record, onset.value, scale)
+    ends = _ends(record, onset.value)
     if ends is None:
         return None
     start, final = ends
@@ -58,15 +59,15 @@ def direct_readings(record: Record, onset: Quantity, scale: Scale) -> Direct | N
             RESPONSES[name] * final.standard_uncertainty,
         )
         level = start.value + RESPONSES[name] * (final.value - start.value)
-        crossing = _crossing(record, onset.value, _Level(level, float(level_u)), scale, final.value)
+        crossing = _crossing(record, onset.value, _Level(level, float(level_u)), final.value)
         if crossing is not None:
             u = np.hypot(crossing.standard_uncertainty, onset.standard_uncertainty or 0.0)
             at = crossing.value - onset.value
-            found[name] = Quantity.wald(at, float(u), scale.quantile)
+            found[name] = Quantity.wald(at, float(u), quantile)
     return Direct(found) if found else None
 
 
-def _ends(record: Record, onset: float, scale: Scale) -> tuple[_Level, _Level] | None:
+def _ends(record: Record, onset: float) -> tuple[_Level, _Level] | None:
     """Levels before the onset and at the end, where both are flat."""
     time = record.time_s
     first = int(np.searchsorted(time, onset))
@@ -74,10 +75,10 @@ def _ends(record: Record, onset: float, scale: Scale) -> tuple[_Level, _Level] |
     tail = max((n - first) // 10, _LEAST)
     if first < _LEAST or n - first < 5 * _LEAST:
         return None
-    start = _mean(record, slice(0, first), scale)
-    final = _mean(record, slice(n - tail, n), scale)
+    start = _mean(record, slice(0, first))
+    final = _mean(record, slice(n - tail, n))
     rise = abs(final.value - start.value)
-    earlier = _mean(record, slice(n - 2 * tail, n - tail), scale)
+    earlier = _mean(record, slice(n - 2 * tail, n - tail))
     still = abs(final.value - earlier.value)
     noise = np.hypot(final.standard_uncertainty, earlier.standard_uncertainty)
     if still > _SETTLED * rise + 3 * noise:
@@ -85,16 +86,26 @@ def _ends(record: Record, onset: float, scale: Scale) -> tuple[_Level, _Level] |
     return start, final
 
 
-def _mean(record: Record, part: slice, scale: Scale) -> _Level:
+def _mean(record: Record, part: slice) -> _Level:
     value = record.value[part]
     weight = np.ones(value.size) if record.weight is None else record.weight[part]
     total = float(weight.sum())
-    return _Level(float(weight @ value / total), float(np.sqrt(scale.variance / total)))
+    mean = float(weight @ value / total)
+    variance = _variance(record, (value - mean) * np.sqrt(weight), 1)
+    return _Level(mean, float(np.sqrt(variance / total)))
 
 
-def _crossing(
-    record: Record, onset: float, level: _Level, scale: Scale, final: float
-) -> _Level | None:
+def _variance(record: Record, rest: FloatArray, parameters: int) -> float:
+    """Variance of an independent sample of unit weight, from what a local fit leaves.
+
+    The thermal model's own residuals would not do: its lack of fit is what is to be checked.
+    """
+    if rest.size < _ENOUGH:
+        return record.noise_k**2
+    return float(rest @ rest / (rest.size - parameters)) * correlation_sum(rest)
+
+
+def _crossing(record: Record, onset: float, level: _Level, final: float) -> _Level | None:
     """Time at which a local parabola passes a level."""
     time, value = record.time_s, record.value
     rough = _rough_crossing(time, value, onset, level.value, final)
@@ -111,7 +122,9 @@ def _crossing(
     root = np.sqrt(weight)
     columns = np.column_stack([np.ones_like(since), since, since**2]) * root[:, None]
     q, r = np.linalg.qr(columns)
-    c = np.linalg.solve(r, q.T @ ((value[near] - level.value) * root))
+    target = (value[near] - level.value) * root
+    c = np.linalg.solve(r, q.T @ target)
+    variance = _variance(record, target - columns @ c, 3)
     inside = c[1] ** 2 - 4 * c[0] * c[2]
     if inside < 0 or c[1] == 0:
         return None
@@ -120,7 +133,7 @@ def _crossing(
         return None
     slope = c[1] + 2 * c[2] * x
     at_x = np.linalg.solve(r.T, np.array([1.0, x, x * x]))
-    u = np.sqrt(scale.variance * float(at_x @ at_x) + level.standard_uncertainty**2)
+    u = np.sqrt(variance * float(at_x @ at_x) + level.standard_uncertainty**2)
     return _Level(rough + half * x, float(half * u / abs(slope)))
 
 

@@ -119,7 +119,7 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
     summary = _step_summary(step, settings, choice)
     direct = None
     if summary.onset_s is not None and not settings.transfer_s:
-        direct = direct_readings(record, summary.onset_s, choice.scale)
+        direct = direct_readings(record, summary.onset_s, choice.scale.quantile)
     cautions += tuple(disagreements(direct, found, fitted.form.poles))
     names, covariance = _covariance(choice)
     predict, band = _curves(choice)
