@@ -169,7 +169,8 @@ def disagreements(direct: Direct | None, quantities: dict[str, Quantity], poles:
         if abs(apart) > 5 * u and abs(apart) > 0.02 * fitted.value:
             words.append(
                 f"the {name} % time read directly is {read.value:.4g} s and the fitted one "
-                f"{fitted.value:.4g} s, further apart than five standard uncertainties of the reading; look at the "
+                f"{fitted.value:.4g} s, further apart than five standard "
+                "uncertainties of the reading; look at the "
                 "residuals, and try another order or window"
             )
     half, ninety = (direct.response_time_s.get(k) for k in ("50", "90"))
