@@ -202,7 +202,9 @@ def _read(
     if time.kind != "number":
         clock = StampTimes(log.reading.day_first)
     parts: dict[str, list[FloatArray]] = {r: [] for r in columns if r != "time"}
-    unreadable: dict[str, tuple[int, str]] = {}
+    strange: dict[str, list[NDArray[np.intp]]] = {r: [] for r in parts}
+    examples: dict[str, str] = {}
+    total = 0
     rows, masks, odd, odd_row = [], [], 0, 0
     values_seen: dict[str, int] = {}
     for batch in log.source.batches(numbers, watch):
@@ -210,11 +212,12 @@ def _read(
         rows.append(batch.rows)
         odd, odd_row = odd + batch.odd_rows, odd_row or batch.odd_example
         clock.add(by_number[time.number])
-        for role in parts:
+        for role, pieces in parts.items():
             found = to_numbers(by_number[columns[role].number], decimal, missing)
-            parts[role].append(found.values)
-            count, example = unreadable.get(role, (0, ""))
-            unreadable[role] = count + found.unreadable, example or found.example
+            pieces.append(found.values)
+            strange[role].append(found.unreadable + total)
+            examples[role] = examples.get(role) or found.example
+        total += batch.rows.size
         if picked is not None and chosen is not None:
             masks.append(_same(by_number[picked.number], str(chosen["value"]), values_seen))
     name = time.short_name or f"number {time.number}"
@@ -225,9 +228,11 @@ def _read(
     work.notes += times.notes
     work.say("rows of another width", odd, f"{odd} rows with another number of fields than the "
              f"rest were left out, the first is row {odd_row}")  # fmt: skip
-    for role, (count, example) in unreadable.items():
+    for role, parts_of_role in strange.items():
+        at = np.concatenate(parts_of_role or [np.empty(0, np.intp)])
+        count = int(np.isfinite(times.seconds[at]).sum())  # without a time the row goes anyway
         work.say("unreadable", count, f'{count} fields of the {role} column hold no number ("'
-                 f'{example}", say) and count as missing')  # fmt: skip
+                 f'{examples[role]}", say) and count as missing')  # fmt: skip
     return times, work, _picked(masks, chosen, values_seen)
 
 

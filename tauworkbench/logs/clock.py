@@ -25,7 +25,7 @@ __all__ = ["NumberTimes", "StampTimes", "Times", "epoch_unit"]
 _EPOCH_DAY = date(1970, 1, 1)
 _EPOCH_FROM_S, _EPOCH_TO_S = 9.46e8, 4.1e9  # 2000 to 2099
 _MOST_ODD = 100_000
-_MINUTE_S, _DAY_S = 60.0, 86400.0
+_DAY_S, _DAY_NS = 86400.0, 86_400_000_000_000
 
 
 @dataclass
@@ -73,7 +73,7 @@ def epoch_unit(values: FloatArray) -> str | None:
         return None
     low, high = float(finite.min()), float(finite.max())
     for unit, factor in (("s", 1.0), ("ms", 1e-3), ("us", 1e-6), ("ns", 1e-9)):
-        if _EPOCH_FROM_S < low * factor and high * factor < _EPOCH_TO_S:
+        if low * factor > _EPOCH_FROM_S and high * factor < _EPOCH_TO_S:
             return unit
     return None
 
@@ -90,7 +90,7 @@ class NumberTimes:
         """Take the column's next piece."""
         found = to_numbers(column, self._decimal, self._missing)
         self._parts.append(found.values)
-        self._unreadable += found.unreadable
+        self._unreadable += found.unreadable.size
         self._example = self._example or found.example
 
     def finish(self, where: str, name: str) -> Times:
@@ -143,7 +143,7 @@ class StampTimes:
         import pyarrow as pa
         import pyarrow.compute as pc
 
-        if pa.types.is_timestamp(column.type) or pa.types.is_date(column.type):
+        if pa.types.is_temporal(column.type):
             self._add_typed(column)
             return
         texts = pc.utf8_trim(pc.cast(column, pa.string()), " \t\xa0'\"")
@@ -166,14 +166,18 @@ class StampTimes:
         import pyarrow as pa
         import pyarrow.compute as pc
 
+        self._dated = not pa.types.is_time(column.type)
         self._zoned |= bool(getattr(column.type, "tz", None))
-        micro = pc.cast(pc.cast(column, pa.timestamp("ns")), pa.int64())
-        valid = np.asarray(pc.is_valid(micro).to_numpy(zero_copy_only=False), dtype=bool)
-        values = np.asarray(pc.fill_null(micro, 0).to_numpy(zero_copy_only=False), dtype=np.int64)
-        day = values // 86_400_000_000_000
-        second = (values - day * 86_400_000_000_000) / 1e9
+        if self._dated:
+            column = pc.cast(column, pa.timestamp("ns", getattr(column.type, "tz", None)))
+        else:
+            column = pc.cast(column, pa.time64("ns"))
+        whole = pc.cast(column, pa.int64())
+        valid = np.asarray(pc.is_valid(whole).to_numpy(zero_copy_only=False), dtype=bool)
+        values = np.asarray(pc.fill_null(whole, 0).to_numpy(zero_copy_only=False), dtype=np.int64)
+        day = values // _DAY_NS
+        second = (values - day * _DAY_NS) / 1e9
         second[~valid] = np.nan
-        self._dated = True
         self._days.append((day, day))
         self._seconds.append(second)
 
@@ -281,9 +285,7 @@ def _by_continuity(
     place: tuple[str, str],
 ) -> tuple[NDArray[np.int64], str]:
     """Choose the order in which the log runs on; None is needed where elapsed times agree."""
-    elapsed = []
-    for day in (one[both], two[both]):
-        elapsed.append((day - day[0]) * _DAY_S + second[both])
+    elapsed = [(d - d[0]) * _DAY_S + second[both] for d in (one[both], two[both])]
     where, name = place
     if np.allclose(elapsed[0], elapsed[1], rtol=0, atol=1e-6):
         a, b = (_date_words(int(d[both][0]), 0.0)[:10] for d in (one, two))

@@ -12,9 +12,10 @@ __all__ = [
     "DIALECTS",
     "ENCODINGS",
     "FOREIGN",
+    "LETTERS",
     "MISSING",
     "SENTINELS",
-    "TRADE_LETTERS",
+    "TRADE_SIGNS",
 ]
 
 # Bytes at the start of a file and the encoding that they announce (Unicode standard, ch. 2.6).
@@ -24,10 +25,11 @@ BOMS: tuple[tuple[bytes, str], ...] = (
     (b"\xfe\xff", "utf-16-be"),
 )
 
-# Tried in this order for text that isn't UTF-8, if all that it then shows beyond ASCII are letters
-# that logs hold; charset-normalizer is asked for the rest.
+# Tried for text that isn't UTF-8, if all that it then shows beyond ASCII are letters that logs hold:
+# the one with most of the trade's signs, the first of equals. charset-normalizer gets the rest.
 ENCODINGS = ("cp1252", "cp437", "mac-roman")
-TRADE_LETTERS = frozenset("°º˚ΩµμΔ±²³·×–‰αβτäöüÄÖÜßéèêàâçñåøæÅØÆ")
+TRADE_SIGNS = frozenset("°ΩµμΔ±²³·×–‰αβτ")
+LETTERS = frozenset("äöüÄÖÜßéèêàâçñåøæÅØÆº˚")
 
 # Files that are no text, by their first bytes, and how to come by text.
 FOREIGN: tuple[tuple[bytes, str, str], ...] = (

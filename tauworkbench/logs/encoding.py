@@ -5,7 +5,7 @@ from __future__ import annotations
 import codecs
 
 from ..errors import InputError
-from .dialects import BOMS, ENCODINGS, FOREIGN, TRADE_LETTERS
+from .dialects import BOMS, ENCODINGS, FOREIGN, LETTERS, TRADE_SIGNS
 
 __all__ = ["encoding_of"]
 
@@ -30,11 +30,13 @@ def encoding_of(head: bytes, given: str | None, where: str) -> str:
         return _wide(head, where)
     if _is_utf8(head):
         return "utf-8"
+    best, most = "", -1
     for name in ENCODINGS:
-        text = head.decode(name, "replace")
-        if {c for c in text if not c.isascii()} <= TRADE_LETTERS:
-            return name
-    return _asked(head)
+        shown = [c for c in head.decode(name, "replace") if not c.isascii()]
+        signs = sum(c in TRADE_SIGNS for c in shown)
+        if signs > most and set(shown) <= TRADE_SIGNS | LETTERS:
+            best, most = name, signs
+    return best or _asked(head)
 
 
 def _known(given: str, where: str) -> str:

@@ -6,7 +6,7 @@ import csv
 import re
 from collections import Counter
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from ..errors import InputError
 from ..units import parse_unit
@@ -14,7 +14,7 @@ from .dialects import COMMENT_MARKS, DIALECTS, MISSING
 from .records import Column, Reading
 from .stamps import is_stamp
 
-__all__ = ["Layout", "named_columns", "sniff", "split_fields"]
+__all__ = ["Layout", "kind_of_texts", "named_columns", "sniff", "split_fields"]
 
 _NUMBER = {
     ".": re.compile(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?"),
@@ -25,6 +25,7 @@ _BRACKETED = re.compile(
 )
 _QUOTED_WORDS = re.compile(r'"([^"]*)"|(\S+)')
 _MOST_COLUMNS = 4096
+SPLIT_STAMP = re.compile(r"(:\d\d),(\d{3})(?=,)")
 
 
 @dataclass(frozen=True)
@@ -32,6 +33,7 @@ class Layout:
     """How the rows of a text log are laid out.
 
     ``header_rows`` counts physical lines before the first sample, ``width`` the fields of a row.
+    ``joined``: a comma before the milliseconds is no delimiter.
     """
 
     delimiter: str
@@ -41,6 +43,7 @@ class Layout:
     columns: tuple[Column, ...]
     missing: tuple[str, ...]
     notes: tuple[str, ...] = ()
+    joined: bool = False
 
 
 def sniff(lines: Sequence[str], given: Reading, where: str) -> Layout:
@@ -51,6 +54,34 @@ def sniff(lines: Sequence[str], given: Reading, where: str) -> Layout:
     InputError
         Where no two columns of numbers are found.
     """
+    layout = _laid_out(lines, given, where)
+    if layout.delimiter == "," and _splits_stamps(lines, layout):
+        joined = [SPLIT_STAMP.sub(r"\1.\2", line) for line in lines]
+        layout = replace(_laid_out(joined, given, where), joined=True)
+    return layout
+
+
+def _splits_stamps(lines: Sequence[str], layout: Layout) -> bool:
+    """Whether commas stand before the milliseconds of unquoted stamps between commas.
+
+    A column after the stamps always holds three digits, and has no name or tells stamps apart that
+    are else the same.
+    """
+    table = [split_fields(line, ",") for line in lines[layout.header_rows :]]
+    rows = [r for r in table if len(r) == layout.width]
+    stamps = [c.number for c in layout.columns if c.kind == "stamp"]
+    if not rows or not stamps or stamps[0] >= layout.width:
+        return False
+    at = stamps[0]
+    if not all(re.fullmatch(r"\d{3}", r[at]) and r[at - 1].count(":") == 2 for r in rows):
+        return False
+    named = sum(bool(c.name) for c in layout.columns)
+    if named:
+        return named == layout.width - 1
+    return len({r[at - 1] for r in rows}) < len(rows)
+
+
+def _laid_out(lines: Sequence[str], given: Reading, where: str) -> Layout:
     delimiter, decimal = _dialect(lines, given, where)
     missing = tuple(MISSING if given.missing is None else map(str.casefold, given.missing))
     table = [split_fields(line, delimiter) for line in lines]
@@ -173,16 +204,20 @@ def _kinds(table: Sequence[Sequence[str]], decimal: str, missing: Sequence[str])
     widths = Counter(len(r) for r in rows[len(rows) // 2 :] if len(r) > 1)
     width = widths.most_common(1)[0][0]
     same = [r for r in rows if len(r) == width]
-    out = []
-    for column in zip(*same[len(same) // 2 :], strict=True):
-        count = Counter(_kind(f, decimal, missing) for f in column)
-        for kind in ("stamp", "number", "text"):
-            if count[kind] and count[kind] >= max(count[k] for k in ("stamp", "number", "text")):
-                out.append(kind)
-                break
-        else:
-            out.append("empty" if not count["missing"] else "number")
-    return tuple(out)
+    return tuple(
+        kind_of_texts(column, decimal, missing)
+        for column in zip(*same[len(same) // 2 :], strict=True)
+    )
+
+
+def kind_of_texts(texts: Sequence[str], decimal: str, missing: Sequence[str]) -> str:
+    """Return what most of a column's texts are: stamp, number, text; or that all are empty."""
+    count = Counter(_kind(text, decimal, missing) for text in texts)
+    kinds = ("stamp", "number", "text")
+    most = max(kinds, key=lambda k: count[k])
+    if count[most]:
+        return most
+    return "number" if count["missing"] else "empty"
 
 
 def _first_sample(
@@ -226,10 +261,11 @@ def _header(
         names = _joined(_fitted(above[-2], width), names)
     notes: tuple[str, ...] = ()
     if len(_trimmed(above[-1])) == width - 1 and not names[0]:
-        notes = (
+        words = (
             f"the header names {width - 1} of {width} columns and the first was taken as the one "
-            "without a name; check the columns, or number them",
+            "without a name; check the columns, or number them"
         )
+        notes = (words,)
     return names, units, notes
 
 

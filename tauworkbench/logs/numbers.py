@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .records import FloatArray
 
@@ -18,10 +19,10 @@ _NUMBER = r"^[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?$"
 
 @dataclass
 class Numbers:
-    """Values (NaN where there is none), and how many fields were neither number nor missing."""
+    """Values (NaN where there is none), and which fields were neither number nor missing."""
 
     values: FloatArray
-    unreadable: int = 0
+    unreadable: NDArray[np.intp] = field(default_factory=lambda: np.empty(0, np.intp))
     example: str = ""
 
 
@@ -46,11 +47,11 @@ def to_numbers(column: Any, decimal: str, missing: Sequence[str]) -> Numbers:
     values = _finite(pc.cast(pc.if_else(good, texts, pa.scalar(None, pa.string())), pa.float64()))
     markers = pa.array(["", *(m.replace(",", ".") for m in missing)], pa.string())
     strange = pc.invert(pc.or_(good, pc.is_in(pc.utf8_lower(texts), value_set=markers)))
-    count = int(pc.sum(strange).as_py() or 0)
-    example = str(column.filter(strange)[0].as_py())[:40] if count else ""
+    at = np.flatnonzero(strange.to_numpy(zero_copy_only=False))
+    example = str(column[int(at[0])].as_py())[:40] if at.size else ""
     if given.size:
         values[np.isin(values, given)] = np.nan
-    return Numbers(values, count, example)
+    return Numbers(values, at, example)
 
 
 def _as_numbers(missing: Sequence[str], decimal: str) -> FloatArray:
@@ -65,11 +66,16 @@ def _as_numbers(missing: Sequence[str], decimal: str) -> FloatArray:
 
 
 def _typed(column: Any) -> FloatArray:
-    """A column that already has a type; whatever is no number is missing."""
+    """A column that already has a type, durations in seconds; what is no number is missing."""
     import pyarrow as pa
     import pyarrow.compute as pc
 
     try:
+        if pa.types.is_duration(column.type):
+            whole = pc.cast(pc.cast(column, pa.duration("ns")), pa.int64())
+            return _finite(pc.cast(whole, pa.float64(), safe=False)) / 1e9
+        if pa.types.is_boolean(column.type):
+            column = pc.cast(column, pa.int8())
         return _finite(pc.cast(column, pa.float64(), safe=False))
     except (pa.ArrowInvalid, pa.ArrowNotImplementedError):
         return np.full(len(column), np.nan)

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import hashlib
+import io
 import os
 import stat
-from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
-from dataclasses import dataclass
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import AbstractContextManager, contextmanager
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import IO
 
@@ -16,9 +17,10 @@ import numpy as np
 from ..errors import InputError
 from ..progress import SILENT, Watch, step
 from .encoding import encoding_of
+from .layout import Layout, sniff
 from .log import Log
 from .records import Reading
-from .layout import sniff
+from .tables import read_parquet, workbook_as_text
 from .text import PIECE_BYTES, TextSource, pieces
 
 __all__ = ["LARGEST_BYTES", "read_log"]
@@ -59,7 +61,8 @@ def read_log(
     file = _File.of(path)
     with file.open() as stream:
         head = stream.read(_HEAD_BYTES)
-    log = _text_log(file, head, reading, watch)
+    kind = next((k for mark, k in _KINDS if head.startswith(mark)), _text_log)
+    log = kind(file, head, reading, watch)
     for key in columns or ():
         log.column(key)
     return log
@@ -116,51 +119,83 @@ def _reason(error: Exception) -> str:
 
 def _text_log(file: _File, head: bytes, reading: Reading, watch: Watch) -> Log:
     encoding = encoding_of(head, reading.encoding, file.path)
-    lines = _head_lines(file, encoding)
+    with file.open() as stream:
+        lines = _head_lines(stream, encoding, file.path)
     layout = sniff(lines, reading, file.path)
-    sha256, filled, blank = _counted(file, watch)
+    sha256, filled = _counted(file.open, file.size, watch)
     source = TextSource(file.open, file.size, encoding, layout, file.path)
-    head_rows = layout.header_rows
-    blank_above = sum(not line.strip() for line in lines[:head_rows])
-    found = Reading(
+    found = _found(layout, reading, encoding)
+    rows = filled - sum(bool(line.strip()) for line in lines[: layout.header_rows])
+    return Log(
+        file.path, layout.columns, sha256, found, max(rows, 0), source, cautions=layout.notes
+    )
+
+
+def _excel_log(file: _File, _head: bytes, reading: Reading, watch: Watch) -> Log:
+    with file.open() as stream:
+        data, notes = workbook_as_text(stream, file.path, watch)
+    lines = _head_lines(io.BytesIO(data), "utf-8", file.path)
+    layout = sniff(lines, replace(reading, delimiter="\t"), file.path)
+    sha256, _ = _counted(file.open, file.size, watch)
+
+    def opened() -> IO[bytes]:
+        return io.BytesIO(data)
+
+    _, filled = _counted(opened, len(data), watch)
+    source = TextSource(opened, len(data), "utf-8", layout, file.path)
+    found = replace(_found(layout, reading, None), delimiter=None)
+    rows = filled - sum(bool(line.strip()) for line in lines[: layout.header_rows])
+    notes = (*notes, *layout.notes)
+    return Log(
+        file.path, layout.columns, sha256, found, max(rows, 0), source, "Excel", cautions=notes
+    )
+
+
+def _parquet_log(file: _File, _head: bytes, reading: Reading, watch: Watch) -> Log:
+    source, columns = read_parquet(file.open, file.path)
+    sha256, _ = _counted(file.open, file.size, watch)
+    found = Reading(day_first=reading.day_first, missing=reading.missing)
+    return Log(file.path, columns, sha256, found, source.rows, source, "Parquet")
+
+
+# The first bytes of files that are no text.
+_KINDS: tuple[tuple[bytes, Callable[[_File, bytes, Reading, Watch], Log]], ...] = (
+    (b"PK\x03\x04", _excel_log),
+    (b"PAR1", _parquet_log),
+)
+
+
+def _found(layout: Layout, reading: Reading, encoding: str | None) -> Reading:
+    """Return how a log is read: what was found, what was given in its place."""
+    return Reading(
         delimiter=layout.delimiter,
         decimal=layout.decimal,
         encoding=encoding,
-        header_rows=head_rows,
+        header_rows=layout.header_rows,
         day_first=reading.day_first,
         missing=reading.missing,
     )
-    return Log(
-        path=file.path,
-        columns=layout.columns,
-        sha256=sha256,
-        reading=found,
-        rows=max(filled - (head_rows - blank_above), 0),
-        source=source,
-        cautions=layout.notes,
-    )
 
 
-def _head_lines(file: _File, encoding: str) -> list[str]:
+def _head_lines(stream: IO[bytes], encoding: str, where: str) -> list[str]:
     """Return the first lines; the last, which may be cut, only where it is the file's only one."""
-    import io
-
-    with file.open() as stream:
-        head = stream.read(_HEAD_BYTES)
+    head = stream.read(_HEAD_BYTES)
     whole = len(head) < _HEAD_BYTES
-    out = b"".join(piece for piece, _ in pieces(io.BytesIO(head), encoding, file.path))
+    out = b"".join(piece for piece, _ in pieces(io.BytesIO(head), encoding, where))
     lines = out.decode("utf-8", "replace").replace("\0", "").split("\n")[:-1]
     if not whole and len(lines) > 1:
         lines.pop()
     return lines[:_HEAD_LINES]
 
 
-def _counted(file: _File, watch: Watch) -> tuple[str, int, int]:
-    """Return a file's SHA-256, and how many of its lines are filled and how many empty."""
+def _counted(
+    opened: Callable[[], AbstractContextManager[IO[bytes]]], size: int, watch: Watch
+) -> tuple[str, int]:
+    """Return a file's SHA-256, and how many of its lines are filled."""
     digest = hashlib.sha256()
     lines = blank = done = 0
     last_end, last = -1, b""
-    with file.open() as stream:
+    with opened() as stream:
         while block := stream.read(PIECE_BYTES):
             digest.update(block)
             data = np.frombuffer(block, np.uint8)
@@ -173,7 +208,7 @@ def _counted(file: _File, watch: Watch) -> tuple[str, int, int]:
             lines += ends.size
             done += len(block)
             last = block[-1:]
-            step(watch, done, file.size, "looking through the log")
+            step(watch, done, size, "looking through the log")
     if last != b"\n":
         lines += 1
-    return digest.hexdigest(), lines - blank, blank
+    return digest.hexdigest(), lines - blank

@@ -171,8 +171,8 @@ def clock_changes(seconds: FloatArray, start_day: int) -> tuple[FloatArray, list
             out = out.copy() if out is seconds else out
             out[good[i + 1] :] -= sign * _HOUR_S
             text = (
-                f"the clock went {words} by an hour for daylight saving at row {good[i + 1] + 1} of "
-                "the samples and the hour was taken out again"
+                f"the clock went {words} by an hour for daylight saving at sample "
+                f"{good[i + 1] + 1} and the hour was taken out again"
             )
             repairs.append(Repair("daylight saving", 1, text, np.array([local[i + 1]])))
     return out, repairs
@@ -202,7 +202,8 @@ def find_gaps(time_s: FloatArray) -> list[Repair]:
     which = "the longest " if at.size > 1 else ""
     words = (
         f"there {'are' if at.size > 1 else 'is'} {many}, {which}of {d[longest]:.4g} s at "
-        f"{time_s[longest]:.6g} s, in a log with a sample every {usual:.4g} s; nothing was put there"
+        f"{time_s[longest]:.6g} s, in a log with a sample every {usual:.4g} s; nothing "
+        "was put there"
     )
     return [Repair("gaps", int(at.size), words, time_s[at][:_MOST_TIMES])]
 
@@ -225,8 +226,8 @@ def find_stalls(time_s: FloatArray) -> list[Repair]:
         if rows >= 2 and 0.5 * kept <= rows + 1 <= 2.0 * kept:
             words = (
                 f"the logger stood still for {d[i]:.4g} s at {time_s[i]:.6g} s and then wrote "
-                f"{rows + 1} rows in {float(d[i + 1 : i + 1 + rows].sum()):.3g} s; their stamps tell "
-                "when they were written: leave them out with window_s if the response is there"
+                f"{rows + 1} rows in {float(d[i + 1 : i + 1 + rows].sum()):.3g} s; their stamps "
+                "tell when they were written: leave them out with window_s if the response is there"
             )
             out.append(Repair("stall", rows + 1, words, time_s[i + 1 : i + 2 + rows]))
     return out

@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from ..errors import InputError
 from ..progress import Watch, step
-from .layout import Layout, split_fields
+from .layout import SPLIT_STAMP, Layout, split_fields
 
 __all__ = ["Batch", "TextSource", "pieces"]
 
@@ -28,7 +28,7 @@ _LONGEST_ROW = 1 << 22
 _BLANKS = re.compile(rb"[ \t]+")
 _BLANKS_OR_QUOTED = re.compile(rb'("[^"\n]*")|[ \t]+')
 _AT_ROW_ENDS = re.compile(rb"^\t+|\t+$", re.MULTILINE)
-_JOINED = re.compile(rb"(:\d\d),(\d{3})(?=,)")
+_SPLIT_STAMP = re.compile(SPLIT_STAMP.pattern.encode())
 
 
 @dataclass
@@ -120,6 +120,8 @@ class TextSource:
             piece = piece.replace(b"\0", b"")
         if b'"' in piece:
             piece = _with_even_quotes(piece)
+        if self.layout.joined:
+            piece = _SPLIT_STAMP.sub(rb"\1.\2", piece)
         if self.layout.delimiter != " ":
             return self.layout.delimiter, piece
         if b'"' in piece:
