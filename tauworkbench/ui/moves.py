@@ -118,9 +118,7 @@ def _set(state: State, found: Resolved, name: str, text: str, typed: dict[str, T
     return _with_earlier(changed, name, state.earlier) if name.endswith(".kind") else changed
 
 
-def _with_earlier(
-    choices: Choices, name: str, earlier: Mapping[str, Mapping[str, Any]]
-) -> Choices:
+def _with_earlier(choices: Choices, name: str, earlier: Mapping[str, Mapping[str, Any]]) -> Choices:
     """Give a newly chosen kind the values that it took before, or that another kind took."""
     table = name.partition(".")[0]
     kind = getattr(choices, table).kind if table in earlier else None

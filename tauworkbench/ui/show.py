@@ -117,16 +117,17 @@ def done_parts(found: Resolved) -> frozenset[str]:
 
 
 def _part(part: Part, state: State, found: Resolved) -> PartShown:
-    columns = words.column_options(found.get("log"))
     error = _error(part, state.choices, found)
-    fields = _fields(part, state, found, columns, error)
+    fields = _fields(part, state, found)
     blamed = any(f.problem for f in fields)
-    problem = "" if error is None or blamed or missing_words(error) else words.error_words(error)
+    problem = ""
+    if error is not None and not missing_words(error) and not _place_of(error, state.choices):
+        problem = words.error_words(error)
     unfolded = state.unfolded.get(part.name, part.name not in state.done_at_first)
     return PartShown(
         name=part.name,
         title=part.title,
-        words=_words(part, state, found, error, blamed or bool(problem)),
+        words=_words(part, state, found, error),
         fields=fields,
         unfolded=unfolded or blamed or bool(problem),
         more=state.more.get(part.name, False)
@@ -147,40 +148,39 @@ def _error(part: Part, choices: Choices, found: Resolved) -> InputError | None:
     return first
 
 
-def _fields(
-    part: Part,
-    state: State,
-    found: Resolved,
-    columns: tuple[tuple[str, str], ...],
-    error: InputError | None,
-) -> tuple[FieldShown, ...]:
-    blame = "" if error is None or missing_words(error) else _blamed(error)
+def _fields(part: Part, state: State, found: Resolved) -> tuple[FieldShown, ...]:
+    """The part's fields, each with what any stage says against it."""
+    columns = words.column_options(found.get("log"))
+    against = {
+        place[1]: words.error_words(error)
+        for error in found.errors.values()
+        if not missing_words(error) and (place := _place_of(error, state.choices))
+    }
     out = []
     for name, more in part.fields(state.choices):
+        problem = against.get(name, "")
         if name in words.STEP_FIELDS:
             shown = words.step_field(name, state, found)
-            against = words.error_words(error) if error and blame == words.STEP_FIELDS[name] else ""
-            out.append(shown if shown.problem else replace(shown, problem=against))
-            continue
-        against = words.error_words(error) if error and blame == name else ""
-        absent = words.absent_words(name, found)
-        shown = field_shown(
-            name, state.choices, state.typed, columns, absent=absent, problem=against
-        )
+            shown = shown if shown.problem else replace(shown, problem=problem)
+        else:
+            absent = words.absent_words(name, state.choices, found)
+            shown = field_shown(
+                name, state.choices, state.typed, columns, absent=absent, problem=problem
+            )
         out.append(replace(shown, place="more" if more else "main"))
     if part.name == "save":
         out += words.save_fields(state)
     return tuple(out)
 
 
-def _words(
-    part: Part, state: State, found: Resolved, error: InputError | None, blamed: bool
-) -> str:
+def _words(part: Part, state: State, found: Resolved, error: InputError | None) -> str:
     """Say in a few words how far a part is."""
     if any(name in state.typed for name, _ in part.fields(state.choices)):
         return "can't read a field, see below"
     if error is not None:
-        return missing_words(error) or ("can't be used, see below" if blamed else "")
+        place = _place_of(error, state.choices)
+        where = "below" if place is None or place[0] is part else place[0].title
+        return missing_words(error) or f"can't be used, see {where}"
     if part.stages[-1] in found.values:
         return words.done_words(part.name, state, found)
     pending = {p.stage for p in found.pending}
@@ -191,10 +191,15 @@ def _words(
     return part.waits_for or "needs: a log"
 
 
-def _blamed(error: InputError) -> str:
-    """The field that an error names: ``[circuit] counts.bits`` is ``circuit.counts.bits``."""
+def _place_of(error: InputError, choices: Choices) -> tuple[Part, str] | None:
+    """The part and the field that an error is about: ``[circuit] counts.bits``, say."""
     found = re.search(r"\[(\w+)\] ([\w.]+)$", error.where)
-    return f"{found[1]}.{found[2]}" if found else ""
+    key = f"{found[1]}.{found[2]}" if found else ""
+    for part in PARTS:
+        for name, _ in part.fields(choices):
+            if key and key == words.STEP_FIELDS.get(name, name):
+                return part, name
+    return None
 
 
 def _status(state: State, found: Resolved) -> Status:

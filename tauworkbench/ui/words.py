@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from functools import lru_cache
 from pathlib import Path
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from ..errors import InputError
+from ..records import Trace
 from ..report.words import CIRCUITS, LAWS, figures, kind_words, model_words
 from ..session.choices import Choices
 from ..session.stages import Resolved
@@ -80,12 +82,15 @@ def _one(note: object) -> str:
     return str(getattr(note, "words", note))
 
 
-def absent_words(name: str, found: Resolved) -> str:
+def absent_words(name: str, choices: Choices, found: Resolved) -> str:
     """Say what was found where a field is empty; nothing where nothing was."""
-    log, channels = found.get("log"), found.get("channels")
+    log = found.get("log")
     inner = name.rpartition(".")[2]
-    if name.startswith("log.units.") and channels is not None:
-        unit = (channels.written or channels.units).get(inner)
+    if name.startswith("log.units.") and log is not None:
+        key = getattr(choices.log, inner)
+        unit = {k: c.unit for (k, _), c in zip(column_options(log), log.columns, strict=True)}.get(
+            key
+        )
         return f"found: {unit}" if unit else ""
     if name.startswith("log.read.") and log is not None:
         value = getattr(log.reading, inner, None)
@@ -192,11 +197,15 @@ def _circuit_words(choices: Choices, found: Resolved) -> str:
     out = kind_words(CIRCUITS, circuit.kind or "")
     if circuit.kind != "thermometer":
         out += f", {kind_words(LAWS, law.kind or '')}"
-    trace = found.get("trace")
+    span = _span_c(found.get("trace"))
+    return out if span is None else f"{out}: {span[0]:.1f} to {span[1]:.1f} °C"
+
+
+@lru_cache(maxsize=4)
+def _span_c(trace: Trace) -> tuple[float, float] | None:
+    """The lowest and the highest temperature; kept, since a record may be long."""
     kept = trace.temperature_c[trace.kept]
-    if kept.size:
-        out += f": {kept.min():.1f} to {kept.max():.1f} °C"
-    return out
+    return (float(kept.min()), float(kept.max())) if kept.size else None
 
 
 def _step_words(choices: Choices, found: Resolved) -> str:

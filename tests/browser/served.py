@@ -119,18 +119,22 @@ def wait_for_plot(page: Any) -> None:
     page.wait_for_selector(".tau-plot[data-frame]", timeout=60_000)
 
 
-def run_cell(page: Any, until: str = ".tau-bench", times: int = 5) -> None:
+def run_cell(page: Any, until: str = ".tau-bench", times: int = 6) -> None:
     """Run the notebook's one cell in JupyterLab, as a user does, until something is there.
 
-    A cell that is run before the kernel listens is lost without a word, so it is tried again.
+    Before the kernel listens a cell that is run is lost, or a dialog asks for the kernel.
     """
     cell = page.locator(".jp-Notebook .jp-CodeCell .cm-content").first
     cell.wait_for(timeout=60_000)
+    page.locator(".jp-StatusBar-Widget, #jp-main-statusbar", has_text="| Idle").first.wait_for()
     for _ in range(times):
+        page.wait_for_timeout(1000)
+        if page.locator(".jp-Dialog").count():
+            page.locator(".jp-Dialog .jp-mod-accept").click()
         cell.click()
         page.keyboard.press("Shift+Enter")
         with contextlib.suppress(Exception):
-            page.locator(until).wait_for(timeout=15_000)
+            page.locator(until).wait_for(timeout=20_000)
             return
     raise AssertionError("the cell didn't run")
 

@@ -226,7 +226,7 @@ class Page:
             return html(words, "tau-help")
         from .browser import UploadPane
 
-        return UploadPane("or from this computer's browser: ", _ACCEPT, self._take_piece)
+        return UploadPane("or upload it: ", _ACCEPT, self._take_piece)
 
     def _take_piece(self, content: dict[str, Any], data: bytes) -> bool:
         try:
