@@ -78,7 +78,8 @@ def _parser() -> argparse.ArgumentParser:
     parser = _Parser(
         prog="tauworkbench",
         description="How fast a temperature sensor follows, from a logged step.",
-        epilog="Exit status: 0 done; 2 the input can't be used, and one line on stderr says why.",
+        epilog="Exit status: 0 done; 2 the input can't be used, and one line on stderr says why; "
+        "3 some runs of a campaign failed.",
     )
     parser.add_argument("--version", action="version", version=f"tauworkbench {__version__}")
     commands: Any = parser.add_subparsers(metavar="COMMAND", required=True)

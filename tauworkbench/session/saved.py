@@ -22,10 +22,10 @@ from ..records import (
 )
 from ..result import FORMAT, FORMAT_MANY, VERSION, Provenance, Result, RunInfo
 from ..uncertainty import Quantity
-from .store import write_files
+from .store import json_text, write_files
 from .toml_file import is_plain_file
 
-__all__ = ["RunResult", "SavedResult", "read_results"]
+__all__ = ["RunResult", "SavedResult", "read_results", "results_from_dict"]
 
 _MOST_BYTES = 50_000_000
 
@@ -50,11 +50,10 @@ class RunResult(Result):
         from ..report.document import render
         from ..report.samples import trace_rows
 
-        numbers = json.dumps(self.as_dict(), indent=2, ensure_ascii=False, allow_nan=False)
         return write_files(
             folder,
             {
-                "result.json": numbers + "\n",
+                "result.json": json_text(self.as_dict()),
                 "trace.csv": trace_rows(self),
                 "report.html": render(self),
             },
@@ -84,7 +83,17 @@ def read_results(path: str | os.PathLike[str]) -> tuple[SavedResult, ...]:
         Where the file can't be read, or isn't a result of this package.
     """
     where = str(path)
-    data = _load(Path(path), where)
+    return results_from_dict(_load(Path(path), where), where)
+
+
+def results_from_dict(data: Any, where: str) -> tuple[SavedResult, ...]:
+    """Return the records in the content of a ``result.json``, one per step.
+
+    Raises
+    ------
+    InputError
+        At ``where``, when it isn't a result of this package.
+    """
     how = "give the result.json that `tauworkbench fit` wrote"
     if not isinstance(data, dict) or data.get("format") not in (FORMAT, FORMAT_MANY):
         raise InputError(where, "is not a result of tauworkbench", how)

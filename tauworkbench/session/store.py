@@ -2,22 +2,36 @@
 
 from __future__ import annotations
 
+import json
 import os
 import shutil
 import tempfile
 from collections.abc import Iterable, Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path
+from typing import Any
 
 from ..errors import InputError
 
-__all__ = ["check_folder", "default_folder", "write_files", "write_new_text", "write_text"]
+__all__ = [
+    "check_folder",
+    "default_folder",
+    "json_text",
+    "write_files",
+    "write_new_text",
+    "write_text",
+]
 
 
 def default_folder(source: str | os.PathLike[str]) -> Path:
     """Return the folder beside an input file that is named after it."""
     path = Path(source)
     return path.parent / (path.stem if path.suffix else f"{path.name}_result")
+
+
+def json_text(data: Any) -> str:
+    """Return plain values as a JSON file: indented, UTF-8, every number finite."""
+    return json.dumps(data, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
 
 def check_folder(folder: str | os.PathLike[str]) -> None:

@@ -1,0 +1,1 @@
+"""Many results to tables: repeatability, lag against speed, decision, comparison, plan."""
