@@ -6,6 +6,7 @@ two numbers is the day, a clock that runs over midnight) is settled when all of 
 
 from __future__ import annotations
 
+import warnings
 from collections import Counter
 from dataclasses import dataclass, field
 from datetime import UTC, date, datetime, timedelta
@@ -25,6 +26,7 @@ __all__ = ["NumberTimes", "StampTimes", "Times", "epoch_unit"]
 _EPOCH_DAY = date(1970, 1, 1)
 _EPOCH_FROM_S, _EPOCH_TO_S = 9.46e8, 4.1e9  # 2000 to 2099
 _MOST_ODD = 100_000
+_DEFAULTS = (datetime(2000, 1, 1), datetime(2001, 2, 2))
 _DAY_S, _DAY_NS = 86400.0, 86_400_000_000_000
 
 
@@ -219,7 +221,7 @@ class StampTimes:
             return
         self._dated = True
         self._zoned |= stamp.tzinfo is not None
-        plain = stamp.astimezone(UTC).replace(tzinfo=None) if stamp.tzinfo else stamp
+        plain = stamp.replace(tzinfo=None)
         days[0][i] = days[1][i] = (plain.date() - _EPOCH_DAY).days
         midnight = datetime.combine(plain.date(), datetime.min.time())
         second[i] = (plain - midnight).total_seconds()
@@ -322,12 +324,20 @@ def _commonest(texts: Any) -> str:
 
 
 def _by_dateutil(text: str, day_first: bool) -> datetime | None:
+    """Return a complete stamp in UTC or without a zone; None for what is none."""
     from dateutil import parser
 
     if len(text) > 48 or sum(c.isdigit() for c in text) < 6 or ":" not in text:
         return None
     try:
-        return parser.parse(text, dayfirst=day_first)
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")  # a zone's name that isn't known is passed over
+            one, two = (
+                parser.parse(text, dayfirst=day_first, default=default) for default in _DEFAULTS
+            )
+            if one != two:
+                return None  # dateutil would put today's date where there is none
+            return one if one.tzinfo is None else one.astimezone(UTC)
     except (ValueError, OverflowError, TypeError, AttributeError):
         return None
 

@@ -25,8 +25,8 @@ BOMS: tuple[tuple[bytes, str], ...] = (
     (b"\xfe\xff", "utf-16-be"),
 )
 
-# Tried for text that isn't UTF-8, if all that it then shows beyond ASCII are letters that logs hold:
-# the one with most of the trade's signs, the first of equals. charset-normalizer gets the rest.
+# Tried for text that isn't UTF-8, if it then shows no letters beyond ASCII but those of logs: the
+# one with most of the trade's signs, the first of equals. charset-normalizer gets the rest.
 ENCODINGS = ("cp1252", "cp437", "mac-roman")
 TRADE_SIGNS = frozenset("°ΩµμΔ±²³·×–‰αβτ")
 LETTERS = frozenset("äöüÄÖÜßéèêàâçñåøæÅØÆº˚")

@@ -54,11 +54,20 @@ def sniff(lines: Sequence[str], given: Reading, where: str) -> Layout:
     InputError
         Where no two columns of numbers are found.
     """
+    _check_delimiter(given.delimiter)
     layout = _laid_out(lines, given, where)
     if layout.delimiter == "," and _splits_stamps(lines, layout):
         joined = [SPLIT_STAMP.sub(r"\1.\2", line) for line in lines]
         layout = replace(_laid_out(joined, given, where), joined=True)
     return layout
+
+
+def _check_delimiter(given: str | None) -> None:
+    if given is None or (len(given) == 1 and given.isascii() and not given.isalnum()
+                         and given not in '\r\n".+-'):  # fmt: skip
+        return
+    how = 'give one sign such as ";", or " " for any run of blanks'
+    raise InputError("[log] read delimiter", f'"{given}" can be no delimiter', how)
 
 
 def _splits_stamps(lines: Sequence[str], layout: Layout) -> bool:

@@ -176,7 +176,9 @@ def _told(where: str) -> Iterator[None]:
 
     try:
         yield
-    except (pa.ArrowException, OSError, EOFError, OverflowError) as e:
+    except TauError:
+        raise
+    except (pa.ArrowException, OSError, EOFError, OverflowError, ValueError, LookupError) as e:
         what = f"is no readable Parquet file ({type(e).__name__})"
         raise InputError(where, what, "write it again, or export it as CSV") from None
 

@@ -262,11 +262,9 @@ def test_long_format_with_names_as_objects(tmp_path):
 
 
 def test_text_beside_numbers_is_no_harm(tmp_path):
-    body = "".join(
-        f"{r},{'door open, fan' if i % 3 else ''}\n" for i, r in enumerate(rows(";").split())
-    )
-    content = "t [s];v [V];bath [degC];event\n" + body.replace(",", ";")
-    log = read_log(written(tmp_path, content.replace("open; fan", "open, fan")))
+    notes = ["door open, fan" if i % 3 else "" for i in range(N)]
+    body = "".join(f"{r};{n}\n" for r, n in zip(rows(";").split(), notes, strict=True))
+    log = read_log(written(tmp_path, "t [s];v [V];bath [degC];event\n" + body))
     assert log.columns[3].kind == "text"
     holds(to_channels(log, {"time": "t", "signal": "v", "reference": "bath"}, {}))
 
