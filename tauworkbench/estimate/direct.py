@@ -15,7 +15,7 @@ from ..records import Direct, FloatArray
 from ..uncertainty import Quantity
 from .derived import RESPONSES
 from .residuals import correlation_sum
-from .starts import Record
+from .starts import Record, thin
 
 __all__ = ["direct_readings", "disagreements"]
 
@@ -48,6 +48,7 @@ def direct_readings(record: Record, onset: Quantity, quantile: float) -> Direct 
         Times after the onset. With a found onset they share its bias: too short for a distributed
         sensor.
     """
+    record = thin(record)
     ends = _ends(record, onset.value)
     if ends is None:
         return None

@@ -8,21 +8,22 @@ import numpy as np
 
 from ..errors import EstimateError
 from ..records import FloatArray, Step, Trace
-from ..steps.blocks import Blocks, IntArray, graded_edges, reduce
+from ..steps.blocks import Blocks, IntArray, graded_edges, reduce, thinned
 from ..steps.find import LEAST_SAMPLES, noise_level
 from ..steps.grid import Start, search, time_constant_grid
 from ..thermal.responses import shape_of
 from .model import Form
 from .settings import FitSettings
 
-__all__ = ["Record", "cut", "fit_blocks", "search_blocks", "shapes", "zoom"]
+__all__ = ["Record", "cut", "fit_blocks", "search_blocks", "shapes", "thin", "zoom"]
 
 # Below this many samples all of them are fitted alone.
 ALL_ALONE = 2500
 # Share of a window's samples that may be impossible for the circuit before the fit is refused.
 MOST_IMPOSSIBLE = 0.01
 _GROWTH = 0.03  # width of a block over its distance from the onset; loses < 0.1 % of information
-_ALONE = 200  # samples that stay alone on either side of an onset
+_SEARCHED = 20_000  # means that a search looks at, at least
+_ALONE = 120  # samples that stay alone on either side of an onset
 _COARSE_GROWTH = 0.12  # for the search, where only the right basin is wanted
 _NEAR_ENOUGH = 0.15  # onset step over the fastest time constant from which a polish converges
 
@@ -55,14 +56,18 @@ class Record:
 
 def cut(trace: Trace, step: Step) -> Record:
     """Take the used samples of a step's window, with their relative weights."""
-    inside = (trace.time_s >= step.window_s[0]) & (trace.time_s <= step.window_s[1])
-    _check_possible(trace, inside)
-    mask = trace.kept & inside
-    time, value = trace.time_s, trace.temperature_c
-    sigma = trace.sigma_k
-    if not mask.all():
-        time, value = time[mask], value[mask]
-        sigma = None if sigma is None else sigma[mask]
+    first = int(np.searchsorted(trace.time_s, step.window_s[0], "left"))
+    stop = int(np.searchsorted(trace.time_s, step.window_s[1], "right"))
+    window = slice(first, max(stop, first))
+    _check_possible(trace, window)
+    mask = np.zeros(trace.time_s.size, bool)
+    mask[window] = trace.kept[window]
+    time, value = trace.time_s[window], trace.temperature_c[window]
+    sigma = None if trace.sigma_k is None else trace.sigma_k[window]
+    if not mask[window].all():
+        kept = mask[window]
+        time, value = time[kept], value[kept]
+        sigma = None if sigma is None else sigma[kept]
     if time.size < LEAST_SAMPLES:
         raise EstimateError(
             "window_s",
@@ -76,11 +81,12 @@ def cut(trace: Trace, step: Step) -> Record:
     return Record(time, value, weight, spacing, noise_level(value), mask)
 
 
-def _check_possible(trace: Trace, inside: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> None:
+def _check_possible(trace: Trace, window: slice) -> None:
     """Refuse a window of which too much can't have come from the circuit."""
     if trace.impossible is None:
         return
-    count, total = int((trace.impossible & inside).sum()), int(inside.sum())
+    inside = trace.impossible[window]
+    count, total = int(inside.sum()), inside.size
     if count > MOST_IMPOSSIBLE * total:
         raise EstimateError(
             "window_s",
@@ -105,6 +111,7 @@ def zoom(record: Record, step: Step, kind: str, *, keep: int = 3) -> tuple[Start
     ``kind`` is that of `steps.grid.search`. A step with a known onset, or none in the record,
     needs one look only.
     """
+    record = thin(record)
     time, n = record.time_s, record.time_s.size
     low, high = step.bracket_s
     if low == high:
@@ -129,6 +136,16 @@ def zoom(record: Record, step: Step, kind: str, *, keep: int = 3) -> tuple[Start
     return best
 
 
+def thin(record: Record) -> Record:
+    """Average runs of samples, where there are samples to spare for a search."""
+    time, value, weight, run = thinned(record.time_s, record.value, record.weight, _SEARCHED)
+    if run == 1:
+        return record
+    spacing = record.spacing_s * run
+    noise = record.noise_k / float(np.sqrt(run))
+    return Record(time, value, weight, spacing, noise, record.mask)
+
+
 def _first_onsets(record: Record, step: Step) -> FloatArray:
     """Onsets in the bracket and, for models that begin later than two poles do, some behind it."""
     low, high = step.bracket_s
@@ -142,11 +159,7 @@ def _first_onsets(record: Record, step: Step) -> FloatArray:
 
 def _between(n: int, first: int, last: int) -> IntArray:
     """Edges that keep 100 blocks inside the bracket, and grow outside it."""
-    edges = graded_edges(n, first, last, growth=_COARSE_GROWTH, alone=6)
-    if last - first <= 60:
-        return edges
-    inside = np.linspace(first, last, 50).astype(np.intp)
-    return np.unique(np.concatenate([edges[(edges < first) | (edges > last)], inside]))
+    return graded_edges(n, first, last, growth=_COARSE_GROWTH, alone=6, inside=50)
 
 
 def _blocks(record: Record, edges: IntArray) -> Blocks:

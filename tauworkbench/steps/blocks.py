@@ -13,7 +13,7 @@ import numpy as np
 
 from ..records import FloatArray
 
-__all__ = ["Blocks", "IntArray", "even_edges", "graded_edges", "reduce"]
+__all__ = ["Blocks", "IntArray", "even_edges", "graded_edges", "reduce", "thinned"]
 
 IntArray = np.ndarray[tuple[int], np.dtype[np.intp]]
 
@@ -52,10 +52,12 @@ class Blocks:
 
 def even_edges(n: int, blocks: int) -> IntArray:
     """First samples of about ``blocks`` blocks of equal sample count."""
-    return np.unique(np.linspace(0, n, min(n, blocks) + 1).astype(np.intp)[:-1])
+    return _sorted(np.linspace(0, n, min(n, blocks) + 1).astype(np.intp)[:-1])
 
 
-def graded_edges(n: int, first: int, last: int, *, growth: float, alone: int) -> IntArray:
+def graded_edges(
+    n: int, first: int, last: int, *, growth: float, alone: int, inside: int = 400
+) -> IntArray:
     """First samples of blocks that widen away from samples ``first`` to ``last``.
 
     Parameters
@@ -72,8 +74,15 @@ def graded_edges(n: int, first: int, last: int, *, growth: float, alone: int) ->
     after = _widening(n - last, growth, alone) + last
     # The baseline is one constant: coarse blocks lose nothing of it.
     before = first - _widening(first, max(growth, 0.2), alone)
-    edges = np.concatenate([[0], before, np.arange(first, last), after])
-    return np.unique(edges[(edges >= 0) & (edges < n)]).astype(np.intp)
+    middle = np.linspace(first, last, min(last - first, inside) + 1).astype(np.intp)
+    edges = np.concatenate([[0], before, middle, after])
+    return _sorted(edges[(edges >= 0) & (edges < n)])
+
+
+def _sorted(edges: IntArray) -> IntArray:
+    """Unique and sorted; by a sort, which for short arrays is sooner than a hash."""
+    edges = np.sort(edges).astype(np.intp)
+    return np.asarray(edges[np.concatenate([[True], np.diff(edges) > 0])])
 
 
 def _widening(length: int, growth: float, alone: int) -> IntArray:
@@ -85,6 +94,33 @@ def _widening(length: int, growth: float, alone: int) -> IntArray:
     steps = int(np.log(length / max(alone, 1.0)) / np.log1p(growth)) + 2
     far = (max(alone, 1.0) * (1 + growth) ** np.arange(steps)).astype(np.intp)
     return np.concatenate([near, far])
+
+
+def thinned(
+    time_s: FloatArray, value: FloatArray, weight: FloatArray | None, most: int
+) -> tuple[FloatArray, FloatArray, FloatArray | None, int]:
+    """Average runs of equal length so that at most twice ``most`` means are left.
+
+    Returns
+    -------
+    time_s, value, weight : ndarray
+        Means, and sums of the weights; what is left over at the end joins the last run.
+    run : int
+        Samples in a run; 1 where nothing was done.
+    """
+    run = time_s.size // most
+    if run < 2:
+        return time_s, value, weight, 1
+    whole = time_s.size // run
+    cut = slice(0, whole * run)
+
+    def mean(x: FloatArray) -> FloatArray:
+        return np.asarray(x[cut].reshape(whole, run).mean(axis=1))
+
+    if weight is None:
+        return mean(time_s), mean(value), None, run
+    total = mean(weight)
+    return mean(time_s * weight) / total, mean(value * weight) / total, total * run, run
 
 
 def reduce(
@@ -102,10 +138,15 @@ def reduce(
         sums = np.add.reduceat(x if weight is None else x * weight, edges)
         return np.asarray(sums / total)
 
-    where = np.repeat(np.arange(count.size), count.astype(np.intp))
-    mean_time, mean_value = mean(time_s), mean(value)
-    late, off = time_s - mean_time[where], value - mean_value[where]
-    var_time, var_value, cov = mean(late * late), mean(off * off), mean(late * off)
+    # Sums about a common origin, in one pass each: the digits that this costs are far below the
+    # noise, and at a million samples a second pass over the blocks costs more than the fit.
+    late, off = time_s - time_s[0], value - value[n // 2]
+    mean_late, mean_off = mean(late), mean(off)
+    var_time = np.maximum(mean(late * late) - mean_late**2, 0.0)
+    var_time[count <= 1] = 0.0
+    var_value = np.maximum(mean(off * off) - mean_off**2, 0.0)
+    cov = mean(late * off) - mean_late * mean_off
+    mean_time, mean_value = mean_late + time_s[0], mean_off + value[n // 2]
     along = np.divide(cov**2, var_time, out=np.zeros_like(cov), where=var_time > 0)
     wide = count >= 4  # fewer samples than that say little beside their own line
     scatter = float(np.sum((total * np.maximum(var_value - along, 0.0))[wide]))

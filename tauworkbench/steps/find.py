@@ -8,7 +8,7 @@ import numpy as np
 
 from ..errors import EstimateError
 from ..records import FloatArray, Step, Trace
-from .blocks import Blocks, even_edges, reduce
+from .blocks import Blocks, even_edges, reduce, thinned
 from .grid import search, time_constant_grid
 from .segments import cuts
 
@@ -26,17 +26,22 @@ _LEAST_SHARE = 0.1
 _BLOCKS = 120
 _PIECE_BLOCKS = 150
 _LOOK = 20_000
+_SEARCHED = 20_000
 # Five samples make a baseline; with fewer, onset and amplitude are one and the same thing.
 _BASELINE = 5
 
 
 @dataclass(frozen=True, eq=False)
 class _Record:
-    """The used samples inside the window."""
+    """The used samples inside the window, a long record as means of short runs.
+
+    ``noise_k`` is that of a sample, ``ends_s`` the first and last sample's times.
+    """
 
     time_s: FloatArray
     value: FloatArray
     noise_k: float
+    ends_s: tuple[float, float]
 
 
 def find_steps(
@@ -66,7 +71,7 @@ def find_steps(
         Fewer than 8 usable samples, or no step above the noise.
     """
     record = _record(trace, window_s)
-    window = window_s or (float(record.time_s[0]), float(record.time_s[-1]))
+    window = window_s or record.ends_s
     if onset == "before":
         return (_whole(record, window, 1, before=True),)
     if onset is not None:
@@ -106,10 +111,14 @@ def noise_level(value: FloatArray) -> float:
 
 
 def _record(trace: Trace, window_s: tuple[float, float] | None) -> _Record:
-    use = trace.kept
+    window = slice(0, trace.time_s.size)
     if window_s is not None:
-        use = use & (trace.time_s >= window_s[0]) & (trace.time_s <= window_s[1])
-    time, value = trace.time_s, trace.temperature_c
+        ends = (
+            np.searchsorted(trace.time_s, window_s[0]),
+            np.searchsorted(trace.time_s, window_s[1], "right"),
+        )
+        window = slice(int(ends[0]), int(max(ends)))
+    time, value, use = trace.time_s[window], trace.temperature_c[window], trace.kept[window]
     if not use.all():
         time, value = time[use], value[use]
     if time.size < LEAST_SAMPLES:
@@ -120,7 +129,9 @@ def _record(trace: Trace, window_s: tuple[float, float] | None) -> _Record:
             "widen the window or log for longer",
             {"samples": float(time.size)},
         )
-    return _Record(time, value, noise_level(value))
+    noise = noise_level(value)
+    thin_time, thin_value, _, _ = thinned(time, value, None, _SEARCHED)
+    return _Record(thin_time, thin_value, noise, (float(time[0]), float(time[-1])))
 
 
 def _candidates(blocks: Blocks) -> FloatArray:
@@ -178,7 +189,7 @@ def _flat(record: _Record, stop: int) -> bool:
     half = stop // 2
     apart = float(np.mean(record.value[half:stop]) - np.mean(record.value[:half]))
     u = record.noise_k * np.sqrt(1 / half + 1 / (stop - half))
-    return abs(apart) <= 4 * u
+    return bool(abs(apart) <= 4 * u)
 
 
 def _whole(record: _Record, window: tuple[float, float], number: int, *, before: bool) -> Step:
@@ -186,7 +197,7 @@ def _whole(record: _Record, window: tuple[float, float], number: int, *, before:
     tenth = max(n // 50, 2)
     start, final = float(np.mean(record.value[:tenth])), float(np.mean(record.value[-tenth:]))
     _check_rise(record, start, final)
-    at = (float(record.time_s[0]),) * 2
+    at = (max(record.ends_s[0], window[0]),) * 2
     return Step(number, window, at, start, final, before)
 
 
@@ -287,7 +298,7 @@ def _piece(record: _Record, blocks: Blocks, number: int, place: int, stop: int) 
     first = max(place - 2, 0)
     while first > 0 and abs(value[first - 1] - level) < flat:
         first -= 1
-    begin = float(record.time_s[0]) if first == 0 else float(time[first] - width / 2)
-    end = float(record.time_s[-1]) if stop >= time.size else float(time[stop] - 1.5 * width)
+    begin = record.ends_s[0] if first == 0 else float(time[first] - width / 2)
+    end = record.ends_s[1] if stop >= time.size else float(time[stop] - 1.5 * width)
     bracket = (max(float(time[place - 1]) - width, begin), float(time[place]) + width)
     return Step(number, (begin, end), bracket, level, final)
