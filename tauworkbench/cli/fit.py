@@ -27,8 +27,7 @@ def run(args: argparse.Namespace) -> int:
     check_folder(folder)
     with progress(args.quiet) as watch:
         result = fit(args.run_file, watch=watch)
-        watch.report(0, 0, "writing the report")
-        result.save(folder)
+        result.save(folder, watch=watch)
     if not args.quiet:
         for line in summary_lines(result):
             print(line)

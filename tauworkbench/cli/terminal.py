@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import argparse
 import shutil
+import signal
 import sys
+import threading
 import time
 from collections.abc import Iterable, Iterator
 from contextlib import contextmanager
+from typing import NoReturn
 
-from ..progress import SILENT, Watch
+from ..progress import Watch
 
 __all__ = ["add_out", "add_quiet", "progress", "say_cautions"]
 
@@ -40,28 +43,41 @@ def say_cautions(cautions: Iterable[str], quiet: bool) -> None:
 
 @contextmanager
 def progress(quiet: bool) -> Iterator[Watch]:
-    """Show progress while the block runs: on a terminal only, erased at its end."""
-    if quiet or not sys.stderr.isatty():
-        yield SILENT
-        return
-    line = _Line()
+    """Watch over the block: show progress on a terminal only, erased at its end; notice Ctrl-C.
+
+    `KeyboardInterrupt` alone is not to be relied on: a library that is being imported may swallow
+    it (seen). The watch remembers, so that the work stops at its next report.
+    """
+    line = _Line(shown=not quiet and sys.stderr.isatty())
+    before = None
+    if threading.current_thread() is threading.main_thread():
+        before = signal.signal(signal.SIGINT, line.interrupt)
     try:
         yield line
     finally:
+        if before is not None:
+            signal.signal(signal.SIGINT, before)
         line.erase()
 
 
 class _Line:
-    """A watch that keeps one line of a terminal up to date."""
+    """A watch that keeps one line of a terminal up to date, or shows nothing."""
 
-    def __init__(self) -> None:
+    def __init__(self, shown: bool) -> None:
+        self._shown = shown
         self._last = 0.0
         self._width = 0
+        self._stopped = False
+
+    def interrupt(self, _signal: int, _frame: object) -> NoReturn:
+        """Remember that the user wants to stop, and say so to whatever runs now."""
+        self._stopped = True
+        raise KeyboardInterrupt
 
     def report(self, done: float, total: float, words: str) -> None:
         """Show the share done and the words, ten times a second at most."""
         now = time.monotonic()
-        if now - self._last < _EVERY_S:
+        if not self._shown or now - self._last < _EVERY_S:
             return
         self._last = now
         share = f"{min(max(done / total, 0.0), 1.0):4.0%} " if total > 0 else ""
@@ -71,8 +87,8 @@ class _Line:
         self._width = len(text)
 
     def cancelled(self) -> bool:
-        """Return False: Ctrl-C comes as `KeyboardInterrupt`."""
-        return False
+        """Return whether Ctrl-C was pressed."""
+        return self._stopped
 
     def erase(self) -> None:
         """Leave the line as it was found."""

@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import Any
 
 from ..errors import InputError
+from ..progress import SILENT, Watch, step
 from ..records import (
     Budget,
     BudgetLine,
@@ -34,13 +35,15 @@ _MOST_BYTES = 50_000_000
 class RunResult(Result):
     """A `Result` that knows how to write itself."""
 
-    def save(self, folder: str | os.PathLike[str]) -> Path:
+    def save(self, folder: str | os.PathLike[str], *, watch: Watch = SILENT) -> Path:
         """Write ``result.json``, ``trace.csv`` and ``report.html`` into a folder.
 
         Parameters
         ----------
         folder : path
             Made when absent. An older result in it is replaced only when all files are complete.
+        watch : Watch
+            Progress; cancelling leaves the folder as it was.
 
         Raises
         ------
@@ -50,14 +53,14 @@ class RunResult(Result):
         from ..report.document import render
         from ..report.samples import trace_rows
 
-        return write_files(
-            folder,
-            {
-                "result.json": json_text(self.as_dict()),
-                "trace.csv": trace_rows(self),
-                "report.html": render(self),
-            },
-        )
+        step(watch, 0.0, 1.0, "writing the report")
+        files = {
+            "result.json": json_text(self.as_dict()),
+            "report.html": render(self),
+            "trace.csv": trace_rows(self),
+        }
+        step(watch, 0.5, 1.0, "writing the files")
+        return write_files(folder, files)
 
 
 @dataclass(frozen=True)

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import contextlib
 import io
+import os
+import signal
 import sys
 
 import pytest
 
 from tauworkbench.cli.terminal import progress, say_cautions
-from tauworkbench.progress import SILENT
+from tauworkbench.errors import Cancelled
+from tauworkbench.progress import step
 
 
 class Terminal(io.StringIO):
@@ -56,12 +60,25 @@ def test_progress_is_erased_on_an_error_too(monkeypatch):
     assert screen(terminal.getvalue()) == ""
 
 
-def test_no_progress_off_a_terminal_nor_when_quiet(monkeypatch):
-    with progress(quiet=False) as watch:
-        assert watch is SILENT
-    monkeypatch.setattr(sys, "stderr", Terminal())
+@pytest.mark.parametrize("quiet", [False, True])
+def test_no_progress_off_a_terminal_nor_when_quiet(monkeypatch, quiet):
+    where = Terminal() if quiet else io.StringIO()
+    monkeypatch.setattr(sys, "stderr", where)
+    monkeypatch.setattr("tauworkbench.cli.terminal._EVERY_S", 0.0)
+    with progress(quiet=quiet) as watch:
+        watch.report(1, 4, "fitting")
+    assert where.getvalue() == ""
+
+
+def test_an_interrupt_that_a_library_swallows_is_remembered():
+    before = signal.getsignal(signal.SIGINT)
     with progress(quiet=True) as watch:
-        assert watch is SILENT
+        with contextlib.suppress(KeyboardInterrupt):
+            os.kill(os.getpid(), signal.SIGINT)
+        assert watch.cancelled()
+        with pytest.raises(Cancelled):
+            step(watch, 0, 1, "fitting")
+    assert signal.getsignal(signal.SIGINT) is before
 
 
 def test_a_caution_is_one_line_and_quiet_leaves_it_out(capsys):
