@@ -223,6 +223,7 @@ def _read(
     name = time.short_name or f"number {time.number}"
     times = clock.finish("[log] time", name)
     work = _Work(times.seconds, {}, np.concatenate(rows) if rows else np.empty(0, np.int64))
+    rows.clear()  # a long log's parts are let go as soon as they are joined
     for role in list(parts):
         work.values[role] = np.concatenate(parts.pop(role) or [np.empty(0)])
     work.notes += times.notes

@@ -70,10 +70,11 @@ class Times:
 
 def epoch_unit(values: FloatArray) -> str | None:
     """Return the unit in which numbers count from 1970-01-01, told by their size; else None."""
-    finite = values[np.isfinite(values)]
-    if not finite.size:
+    good = np.isfinite(values)
+    if not good.any():
         return None
-    low, high = float(finite.min()), float(finite.max())
+    low = float(np.min(values, where=good, initial=np.inf))
+    high = float(np.max(values, where=good, initial=-np.inf))
     for unit, factor in (("s", 1.0), ("ms", 1e-3), ("us", 1e-6), ("ns", 1e-9)):
         if low * factor > _EPOCH_FROM_S and high * factor < _EPOCH_TO_S:
             return unit

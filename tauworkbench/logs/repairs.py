@@ -5,6 +5,8 @@ Nothing here reads a file or changes an array that it was given.
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -25,6 +27,8 @@ __all__ = [
 BoolArray = NDArray[np.bool_]
 _HOUR_S, _DAY_S = 3600.0, 86400.0
 _MOST_TIMES = 1000
+# Long records are looked at in parts, each with this many samples of its neighbours.
+_AT_ONCE, _AROUND = 1 << 20, 24
 
 
 def spikes(values: FloatArray, *, threshold: float = 12.0) -> BoolArray:
@@ -43,14 +47,22 @@ def spikes(values: FloatArray, *, threshold: float = 12.0) -> BoolArray:
         record's smallest steps.
     """
     out = np.zeros(values.size, bool)
+    for a in range(0, values.size, _AT_ONCE):
+        b = a + _AT_ONCE
+        start = max(a - _AROUND, 0)
+        out[a:b] = _spikes(values[start : b + _AROUND], threshold)[a - start : b - start]
+    return out
+
+
+def _spikes(values: FloatArray, threshold: float) -> BoolArray:
+    out = np.zeros(values.size, bool)
     if values.size < 8:
         return out
     d = np.diff(values)
     before, after = d[:-1], d[1:]
     # A spike's two differences are opposite; only these samples need a closer look.
     height = np.where(before * after < 0, np.minimum(np.abs(before), np.abs(after)), 0.0)
-    floor = threshold * _sigma(d)
-    floor = max(floor, 4.0 * _quantum(d))
+    floor = max(threshold * _sigma(d), 4.0 * _quantum(d))
     for i in np.flatnonzero((height > floor) & (np.abs(before + after) < 0.25 * height)):
         # Noise near it: its own two differences left out; outliers beside it don't hide it.
         near = np.abs(np.r_[d[max(0, i - 20) : i], d[i + 2 : i + 22]])
@@ -78,22 +90,16 @@ def find_stuck(time_s: FloatArray, values: FloatArray) -> list[Repair]:
     chance such a one repeats with probability below 0.3, and 20 times running in no log. The noise
     is that of the second differences outside such stretches, in which a response hardly shows.
     """
-    d = np.diff(values)
-    same = np.r_[False, d == 0, False]
-    edges = np.flatnonzero(np.diff(same.astype(np.int8)))
+    same = np.r_[False, values[1:] == values[:-1], False]
+    edges = np.flatnonzero(same[1:] != same[:-1])
     starts, ends = edges[::2], edges[1::2]
     long = (ends - starts) >= 20
-    if not long.any():
-        return []
-    inside = np.zeros(values.size, bool)
-    for a, b in zip(starts[long], ends[long], strict=True):
-        inside[a : b + 1] = True
-    second = np.diff(d)[~(inside[:-2] | inside[1:-1] | inside[2:])]
-    if second.size < 30 or 1.4826 * np.median(np.abs(second)) / np.sqrt(6.0) < _quantum(d):
+    starts, ends = starts[long], ends[long]
+    if not starts.size or not _is_noisy(values, starts, ends):
         return []
     out = []
     low, high = float(values.min()), float(values.max())
-    for a, b in zip(starts[long][:20], ends[long][:20], strict=True):
+    for a, b in zip(starts[:20], ends[:20], strict=True):
         value = float(values[a])
         rail = value in (low, high)
         what = "stays at its extreme, a rail perhaps," if rail else "doesn't change"
@@ -107,6 +113,22 @@ def find_stuck(time_s: FloatArray, values: FloatArray) -> list[Repair]:
             Repair("rail" if rail else "stuck", count, words, time_s[a : b + 1][:_MOST_TIMES])
         )
     return out
+
+
+def _is_noisy(values: FloatArray, starts: Any, ends: Any) -> bool:
+    """Whether the noise outside stretches that repeat is at least one of the smallest steps."""
+    first = max(int(starts[0]) - _AT_ONCE // 2, 0)
+    part = values[first : first + _AT_ONCE]
+    inside = np.zeros(part.size, bool)
+    for a, b in zip(starts - first, ends - first, strict=True):
+        if a >= part.size:
+            break
+        inside[a : b + 1] = True
+    d = np.diff(part)
+    second = np.diff(d)[~(inside[:-2] | inside[1:-1] | inside[2:])]
+    if second.size < 30:
+        return False
+    return bool(1.4826 * np.median(np.abs(second)) / np.sqrt(6.0) >= _quantum(d))
 
 
 def sentinels(values: FloatArray) -> dict[float, BoolArray]:
@@ -198,9 +220,10 @@ def find_gaps(time_s: FloatArray) -> list[Repair]:
     d = np.diff(time_s)
     if d.size < 8:
         return []
-    usual = float(np.median(d))
-    # An interval that half of the log has is no gap, however uneven the rest is.
-    limit = max(5.0 * usual, 2.0 * float(np.quantile(d, 0.99)))
+    some = d[:: d.size // _AT_ONCE + 1]
+    usual = float(np.median(some))
+    # An interval that one in a hundred is as long as is no gap, however uneven the rest is.
+    limit = max(5.0 * usual, 2.0 * float(np.quantile(some, 0.99)))
     at = np.flatnonzero(d > limit)
     if not at.size:
         return []
@@ -223,7 +246,7 @@ def find_stalls(time_s: FloatArray) -> list[Repair]:
     d = np.diff(time_s)
     if d.size < 20:
         return []
-    usual = float(np.median(d))
+    usual = float(np.median(d[:: d.size // _AT_ONCE + 1]))
     out = []
     for i in np.flatnonzero(d > 3.0 * usual)[:200]:
         burst = d[i + 1 : i + 1 + 1000] < 0.3 * usual

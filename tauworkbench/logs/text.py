@@ -23,7 +23,7 @@ from .layout import SPLIT_STAMP, Layout, split_fields
 
 __all__ = ["Batch", "TextSource", "pieces"]
 
-PIECE_BYTES = 1 << 24
+PIECE_BYTES = 1 << 23
 _LONGEST_ROW = 1 << 22
 _BLANKS = re.compile(rb"[ \t]+")
 _BLANKS_OR_QUOTED = re.compile(rb'("[^"\n]*")|[ \t]+')
@@ -151,7 +151,7 @@ def pieces(file: IO[bytes], encoding: str, where: str) -> Iterator[tuple[bytes, 
         cut = max(data.rfind(b"\n"), data.rfind(b"\r", 0, len(data) - 1)) + 1
         rest = data[cut:]
         if len(rest) > _LONGEST_ROW + PIECE_BYTES:
-            raise InputError(where, "holds a row of more than 20 MB", "give a log in rows")
+            raise InputError(where, "holds a row of more than 10 MB", "give a log in rows")
         if cut:
             yield _plain(data[:cut], encoding, wide), len(block)
 
