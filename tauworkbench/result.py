@@ -12,6 +12,7 @@ from typing import Any
 import numpy as np
 
 from .errors import __version__
+from .estimate.compare import heating_minus_cooling
 from .estimate.record import Estimate
 from .records import Budget, Direct, FitSummary, StepSummary, Trace
 from .uncertainty import Quantity
@@ -95,7 +96,11 @@ class Result:
         each = [result_dict(self, e) for e in self.estimates]
         if len(each) == 1:
             return each[0]
-        return {"format": FORMAT_MANY, "version": VERSION, "results": each}
+        many = {"format": FORMAT_MANY, "version": VERSION, "results": each}
+        difference = heating_minus_cooling(self.estimates)
+        if difference is not None:
+            many["heating_minus_cooling_s"] = difference.as_dict()
+        return many
 
 
 def result_dict(result: Result, estimate: Estimate) -> dict[str, Any]:
