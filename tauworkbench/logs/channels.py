@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import difflib
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Any
 
@@ -14,16 +14,13 @@ from numpy.typing import NDArray
 from ..errors import InputError
 from ..progress import SILENT, Watch
 from ..units import canonical, convert, dimension, parse_unit
-from . import repairs as find
 from .clock import NumberTimes, StampTimes, Times
 from .log import Log
-from .numbers import to_numbers
-from .records import Channels, Column, FloatArray, Repair
+from .numbers import Growing, to_numbers
+from .records import Channels, Column
+from .timebase import Use, Work, check_enough, fill, look_through, merge, on_log_time, order
 
 __all__ = ["to_channels"]
-
-FEWEST = 8
-_MOST_TIMES = 1000
 
 
 @dataclass(frozen=True)
@@ -50,30 +47,6 @@ _ROLES = MappingProxyType(
         "speed": _Role("[recover] speed", "hold", "speed"),
     }
 )
-
-
-@dataclass
-class _Work:
-    """The channels while they are being made; never handed out."""
-
-    time_s: FloatArray
-    values: dict[str, FloatArray]
-    rows: NDArray[np.int64]
-    repairs: list[Repair] = field(default_factory=list)
-    notes: list[str] = field(default_factory=list)
-
-    def keep(self, mask: NDArray[np.bool_]) -> None:
-        """Keep only some samples."""
-        if mask.all():
-            return
-        self.time_s, self.rows = self.time_s[mask], self.rows[mask]
-        for role in self.values:
-            self.values[role] = self.values[role][mask]
-
-    def say(self, kind: str, count: int, words: str, times_s: Any = ()) -> None:
-        """Add a repair, if anything was repaired."""
-        if count:
-            self.repairs.append(Repair(kind, count, words, np.array(times_s[:_MOST_TIMES], float)))
 
 
 def to_channels(
@@ -110,16 +83,16 @@ def to_channels(
     times, work, chosen = _read(log, columns, named, object, watch)
     work.notes[:0] = [words for _, words in named.values() if words]
     written = {role: unit for role, (unit, _) in named.items() if unit and role != "time"}
-    _on_log_time(work, times, chosen)
-    _order(work)
-    _fill(work, columns)
-    _merge(work)
-    _check_enough(log, work)
+    on_log_time(work, times, chosen)
+    order(work)
+    fill(work, {role: _use(role, columns[role]) for role in work.values})
+    merge(work)
+    check_enough(log.path, work)
     shown = {}
     for role, unit in written.items():
         shown[role] = unit if role == "marker" else canonical(unit)
         work.values[role] = convert(work.values[role], unit, shown[role])
-    _look_through(work)
+    look_through(work)
     return Channels(
         work.time_s,
         MappingProxyType(work.values),
@@ -129,6 +102,14 @@ def to_channels(
         times.origin,
         tuple(work.repairs),
         (*log.cautions, *work.notes, *(r.words for r in work.repairs)),
+    )
+
+
+def _use(role: str, column: Column) -> Use:
+    return Use(
+        column.short_name or f"number {column.number}",
+        _where(role),
+        _ROLES[role].absent if role in _ROLES else "keep",
     )
 
 
@@ -190,7 +171,7 @@ def _read(
     named: Mapping[str, tuple[str | None, str]],
     chosen: Mapping[str, Any] | None,
     watch: Watch,
-) -> tuple[Times, _Work, NDArray[np.bool_] | None]:
+) -> tuple[Times, Work, NDArray[np.bool_] | None]:
     """Read all columns in use in one pass."""
     decimal, missing = log.reading.decimal or ".", log.missing
     numbers = list(dict.fromkeys(c.number for c in columns.values()))
@@ -198,23 +179,23 @@ def _read(
     if picked is not None and picked.number not in numbers:
         numbers.append(picked.number)
     time = columns["time"]
-    clock: Any = NumberTimes(named["time"][0], decimal, missing)
+    clock: Any = NumberTimes(named["time"][0], decimal, missing, log.rows)
     if time.kind != "number":
-        clock = StampTimes(log.reading.day_first)
-    parts: dict[str, list[FloatArray]] = {r: [] for r in columns if r != "time"}
+        clock = StampTimes(log.reading.day_first, log.rows)
+    parts = {role: Growing(log.rows) for role in columns if role != "time"}
     strange: dict[str, list[NDArray[np.intp]]] = {r: [] for r in parts}
     examples: dict[str, str] = {}
     total = 0
-    rows, masks, odd, odd_row = [], [], 0, 0
+    rows, masks, odd, odd_row = Growing(log.rows, np.int64), [], 0, 0
     values_seen: dict[str, int] = {}
     for batch in log.source.batches(numbers, watch):
         by_number = dict(zip(numbers, batch.fields, strict=True))
-        rows.append(batch.rows)
+        rows.add(batch.rows)
         odd, odd_row = odd + batch.odd_rows, odd_row or batch.odd_example
         clock.add(by_number[time.number])
         for role, pieces in parts.items():
             found = to_numbers(by_number[columns[role].number], decimal, missing)
-            pieces.append(found.values)
+            pieces.add(found.values)
             strange[role].append(found.unreadable + total)
             examples[role] = examples.get(role) or found.example
         total += batch.rows.size
@@ -222,10 +203,8 @@ def _read(
             masks.append(_same(by_number[picked.number], str(chosen["value"]), values_seen))
     name = time.short_name or f"number {time.number}"
     times = clock.finish("[log] time", name)
-    work = _Work(times.seconds, {}, np.concatenate(rows) if rows else np.empty(0, np.int64))
-    rows.clear()  # a long log's parts are let go as soon as they are joined
-    for role in list(parts):
-        work.values[role] = np.concatenate(parts.pop(role) or [np.empty(0)])
+    values = {role: pieces.finish() for role, pieces in parts.items()}
+    work = Work(times.seconds, values, rows.finish())
     work.notes += times.notes
     work.say("rows of another width", odd, f"{odd} rows with another number of fields than the "
              f"rest were left out, the first is row {odd_row}")  # fmt: skip
@@ -265,151 +244,3 @@ def _picked(
             f'did you mean "{near[0]}"?' if near else f"the values there are {shown}",
         )
     return mask
-
-
-def _on_log_time(work: _Work, times: Times, chosen: NDArray[np.bool_] | None) -> None:
-    """Let the clock run on, count from the earliest stamp, drop rows without a time."""
-    if times.kind == "clock":
-        work.time_s, count = find.over_midnight(work.time_s)
-        work.say("midnight", count, f"the clock runs over midnight {count} times and has no date; "
-                 "each time a day was added")  # fmt: skip
-    changes: list[Repair] = []
-    if times.kind == "date" and not times.zoned:
-        work.time_s, changes = find.clock_changes(work.time_s, times.start_day)
-    good = np.isfinite(work.time_s)
-    if not good.any():
-        raise InputError(
-            "[log] time", "the time column holds no time that can be read",
-            "choose another column, or say how to read it under [log] read",
-        )  # fmt: skip
-    first = float(np.min(work.time_s, where=good, initial=np.inf))
-    work.time_s -= first
-    work.repairs += [Repair(r.kind, r.count, r.words, r.times_s - first) for r in changes]
-    if chosen is not None:
-        good &= chosen
-    lost = int((~np.isfinite(work.time_s) & (chosen if chosen is not None else True)).sum())
-    example = f' ("{times.example}", say)' if times.example else ""
-    work.say("rows without a time", lost, f"{lost} rows without a readable time{example} were "
-             "dropped")  # fmt: skip
-    work.keep(good)
-
-
-def _order(work: _Work) -> None:
-    """Sort by time, where it isn't."""
-    d = np.diff(work.time_s)
-    if not (d < 0).any():
-        return
-    late = work.time_s < np.maximum.accumulate(work.time_s)
-    count = int(late.sum())
-    work.say("out of order", count, f"{count} rows came after later ones and were sorted by time",
-             work.time_s[late])  # fmt: skip
-    order = np.argsort(work.time_s, kind="stable")
-    work.time_s, work.rows = work.time_s[order], work.rows[order]
-    for role in work.values:
-        work.values[role] = work.values[role][order]
-
-
-def _fill(work: _Work, columns: Mapping[str, Column]) -> None:
-    """Deal with absent values, each role in its way."""
-    for role, values in work.values.items():
-        for number, mask in find.sentinels(values).items():
-            values[mask] = np.nan
-            work.say("missing", int(mask.sum()), f"{int(mask.sum())} values of {number:g} in the "
-                     f"{role} column stand for no value and were set aside; give missing = [] "
-                     "under [log] read if they are real", work.time_s[mask])  # fmt: skip
-        absent = ~np.isfinite(values)
-        count = int(absent.sum())
-        if not count:
-            continue
-        if count == values.size:
-            name = columns[role].short_name or f"number {columns[role].number}"
-            raise InputError(
-                _where(role), f'column "{name}" holds no number', "choose another column"
-            )
-        how = _ROLES[role].absent if role in _ROLES else "keep"
-        if how == "hold":
-            work.values[role] = _held(values, absent)
-        elif how == "line":
-            work.values[role] = np.interp(work.time_s, work.time_s[~absent], values[~absent])
-            work.say("drawn through", count, f"{count} absent values of the {role} column were "
-                     "drawn as straight lines between its others", work.time_s[absent])  # fmt: skip
-    absent = ~np.isfinite(work.values["signal"])
-    count = int(absent.sum())
-    work.say("missing samples", count, f"{count} rows without a signal were dropped",
-             work.time_s[absent])  # fmt: skip
-    work.keep(~absent)
-
-
-def _held(values: FloatArray, absent: NDArray[np.bool_]) -> FloatArray:
-    """Each value until the next; before the first, the first."""
-    good = np.flatnonzero(~absent)
-    at = np.searchsorted(good, np.arange(values.size), side="right") - 1
-    return np.asarray(values[good[np.maximum(at, 0)]])
-
-
-def _merge(work: _Work) -> None:
-    """Average rows with one and the same stamp."""
-    new = np.r_[True, np.diff(work.time_s) > 0]
-    if new.all():
-        return
-    first = np.flatnonzero(new)
-    size = np.diff(np.r_[first, new.size])
-    signal = work.values["signal"]
-    spread = np.maximum.reduceat(signal, first) - np.minimum.reduceat(signal, first)
-    count = int(new.size - first.size)
-    words = f"{count} rows repeat the stamp of another and were averaged with it"
-    if (spread > 0).any():
-        words += f"; their signals differ by up to {float(spread.max()):.4g}"
-    if count > 0.3 * new.size:
-        words += f"; the stamps are coarser than the log, {new.size / first.size:.3g} rows in each"
-    work.say("duplicates", count, words, work.time_s[first[size > 1]])
-    for role, values in work.values.items():
-        finite = np.isfinite(values)
-        number = np.add.reduceat(finite.astype(float), first)
-        total = np.add.reduceat(np.where(finite, values, 0.0), first)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            work.values[role] = np.where(number > 0, total / number, np.nan)
-    work.time_s, work.rows = work.time_s[first], work.rows[first]
-
-
-def _check_enough(log: Log, work: _Work) -> None:
-    if work.time_s.size >= FEWEST:
-        return
-    merged = sum(r.count for r in work.repairs if r.kind == "duplicates")
-    if merged and work.time_s.size == 1:
-        raise InputError(log.path, "has one and the same time in all rows", "choose another column")
-    raise InputError(
-        log.path,
-        f"holds {work.time_s.size} usable samples, and at least {FEWEST} are needed",
-        "give a longer log" if not work.repairs else f"look at this: {work.repairs[0].words}",
-    )
-
-
-def _look_through(work: _Work) -> None:
-    """Set spikes aside; note stuck values, gaps, stalls and a reference that is polled slowly."""
-    signal = work.values["signal"]
-    mask = find.spikes(signal)
-    if mask.any():
-        count = int(mask.sum())
-        words = (
-            f"{count} single samples stood far out of the signal and were set aside as spikes, the "
-            f"first at {work.time_s[mask][0]:.6g} s"
-        )
-        work.repairs.append(
-            Repair(
-                "spikes", count, words, work.time_s[mask][:_MOST_TIMES], signal[mask][:_MOST_TIMES]
-            )
-        )
-        work.keep(~mask)
-    if "reference" in work.values:
-        found = find.polled(work.time_s, work.values["reference"])
-        if found is not None:
-            before = work.values["reference"]
-            work.values["reference"], period = found
-            changed = int(np.count_nonzero(work.values["reference"] != before))
-            work.say("polled", changed, f"the reference repeats its values: it was read only every "
-                     f"{period:.4g} s, and {changed} repeats were replaced by straight lines "
-                     "between its true updates; log it faster if its shape matters")  # fmt: skip
-    work.repairs += find.find_stuck(work.time_s, work.values["signal"])
-    stalls = find.find_stalls(work.time_s)
-    work.repairs += stalls or find.find_gaps(work.time_s)

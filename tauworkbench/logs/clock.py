@@ -6,8 +6,6 @@ two numbers is the day, a clock that runs over midnight) is settled when all of 
 
 from __future__ import annotations
 
-import warnings
-from collections import Counter
 from dataclasses import dataclass, field
 from datetime import UTC, date, datetime, timedelta
 from typing import Any
@@ -17,16 +15,16 @@ from numpy.typing import NDArray
 
 from ..errors import InputError
 from ..units import convert
-from .numbers import to_numbers
+from .dates import by_continuity, by_dateutil, clock_words, commonest, date_words
+from .numbers import Growing, to_numbers
 from .records import FloatArray
-from .stamps import FORMS, Parts, form_of, is_dated, parts_of
+from .stamps import FORMS, Parts, is_dated, parts_of
 
 __all__ = ["NumberTimes", "StampTimes", "Times", "epoch_unit"]
 
 _EPOCH_DAY = date(1970, 1, 1)
 _EPOCH_FROM_S, _EPOCH_TO_S = 9.46e8, 4.1e9  # 2000 to 2099
 _MOST_ODD = 100_000
-_DEFAULTS = (datetime(2000, 1, 1), datetime(2001, 2, 2))
 _DAY_S, _DAY_NS = 86400.0, 86_400_000_000_000
 
 
@@ -84,15 +82,17 @@ def epoch_unit(values: FloatArray) -> str | None:
 class NumberTimes:
     """A time column of numbers in a unit; without one only an epoch is understood."""
 
-    def __init__(self, unit: str | None, decimal: str, missing: tuple[str, ...]) -> None:
+    def __init__(
+        self, unit: str | None, decimal: str, missing: tuple[str, ...], expected: int = 0
+    ) -> None:
         self._unit, self._decimal, self._missing = unit, decimal, missing
-        self._parts: list[FloatArray] = []
+        self._values = Growing(expected)
         self._unreadable, self._example = 0, ""
 
     def add(self, column: Any) -> None:
         """Take the column's next piece."""
         found = to_numbers(column, self._decimal, self._missing)
-        self._parts.append(found.values)
+        self._values.add(found.values)
         self._unreadable += found.unreadable.size
         self._example = self._example or found.example
 
@@ -104,8 +104,7 @@ class NumberTimes:
         InputError
             Where the unit isn't known.
         """
-        values = np.concatenate(self._parts) if self._parts else np.empty(0)
-        self._parts.clear()
+        values: FloatArray = self._values.finish()
         notes = []
         unit = self._unit
         if unit is None:
@@ -131,11 +130,11 @@ class NumberTimes:
 class StampTimes:
     """A time column of stamps."""
 
-    def __init__(self, day_first: bool | None) -> None:
+    def __init__(self, day_first: bool | None, expected: int = 0) -> None:
         self._given = day_first
         self._form: str | None = None
         self._days: list[tuple[NDArray[np.int64], NDArray[np.int64]]] = []
-        self._seconds: list[FloatArray] = []
+        self._seconds = Growing(expected)
         self._dated: bool | None = None
         self._zoned = False
         self._odd = 0
@@ -151,7 +150,7 @@ class StampTimes:
             return
         texts = pc.utf8_trim(pc.cast(column, pa.string()), " \t\xa0'\"")
         if self._form is None:
-            self._form = _commonest(texts)
+            self._form = commonest(texts)
         parts = parts_of(texts, self._form)
         if self._dated is None and np.isfinite(parts.second).any():
             self._dated = parts.dated
@@ -163,7 +162,7 @@ class StampTimes:
         self._zoned |= parts.zoned
         same = days[0] is days[1]
         self._days.append((days[0], days[0] if same else days[1]))
-        self._seconds.append(parts.second)
+        self._seconds.add(parts.second)
 
     def _add_typed(self, column: Any) -> None:
         import pyarrow as pa
@@ -182,7 +181,7 @@ class StampTimes:
         second = (values - day * _DAY_NS) / 1e9
         second[~valid] = np.nan
         self._days.append((day, day))
-        self._seconds.append(second)
+        self._seconds.add(second)
 
     def _others(
         self, texts: Any, rows: NDArray[np.int64], days: list[NDArray[np.int64]],
@@ -215,7 +214,7 @@ class StampTimes:
         stamp = None
         if self._odd < _MOST_ODD and self._dated is not False:
             self._odd += 1
-            stamp = _by_dateutil(text, bool(self._given))
+            stamp = by_dateutil(text, bool(self._given))
         if stamp is None:
             self._unreadable += 1
             self._example = self._example or text[:40]
@@ -235,8 +234,7 @@ class StampTimes:
         InputError
             Where nothing tells which of two numbers is the day, and the elapsed times depend on it.
         """
-        second = np.concatenate(self._seconds) if self._seconds else np.empty(0)
-        self._seconds.clear()
+        second: FloatArray = self._seconds.finish()
         out = Times(
             second, "date" if self._dated else "clock", zoned=self._zoned,
             unreadable=self._unreadable, example=self._example,
@@ -244,7 +242,7 @@ class StampTimes:
         if out.kind == "clock":
             first = out.first_s
             if np.isfinite(first):
-                out.origin = f"{_clock_words(float(second[np.isfinite(second)][0]))} by the log's "
+                out.origin = f"{clock_words(float(second[np.isfinite(second)][0]))} by the log's "
                 out.origin += "clock, which shows no date"
             return out
         day, note = self._settled(second, where, name)
@@ -258,7 +256,7 @@ class StampTimes:
         second += (day - out.start_day) * _DAY_S
         second[~good] = np.nan
         first = out.first_s
-        out.origin = _date_words(out.start_day, first) + ("Z" if out.zoned else "")
+        out.origin = date_words(out.start_day, first) + ("Z" if out.zoned else "")
         return out
 
     def _settled(self, second: FloatArray, where: str, name: str) -> tuple[NDArray[np.int64], str]:
@@ -277,82 +275,4 @@ class StampTimes:
         if np.array_equal(one[seen], two[seen]):
             return one, ""
         both = as_day & as_month
-        return _by_continuity(one, two, second, both, (where, name))
-
-
-def _by_continuity(
-    one: NDArray[np.int64],
-    two: NDArray[np.int64],
-    second: FloatArray,
-    both: NDArray[np.bool_],
-    place: tuple[str, str],
-) -> tuple[NDArray[np.int64], str]:
-    """Choose the order in which the log runs on; None is needed where elapsed times agree."""
-    elapsed = [(d - d[0]) * _DAY_S + second[both] for d in (one[both], two[both])]
-    where, name = place
-    if np.allclose(elapsed[0], elapsed[1], rtol=0, atol=1e-6):
-        a, b = (_date_words(int(d[both][0]), 0.0)[:10] for d in (one, two))
-        note = f'the date in "{name}" may be {a} or {b}; no elapsed time depends on it'
-        return one, note
-    largest = [float(np.max(np.abs(np.diff(e)))) for e in elapsed]
-    for day, mine, other, words in (
-        (one, largest[0], largest[1], "day"), (two, largest[1], largest[0], "month"),
-    ):  # fmt: skip
-        if mine < 0.5 * _DAY_S and other > 20 * _DAY_S:
-            note = (
-                f'the dates in "{name}" were read {words} first: the log then runs on without a '
-                f"gap, and else one of {other / _DAY_S:.0f} days; day_first overrules it"
-            )
-            return day, note
-    raise InputError(
-        where,
-        f'the dates in "{name}" may have the day or the month first, and no row tells which',
-        "say so with day_first under [log] read",
-    )
-
-
-def _commonest(texts: Any) -> str:
-    """Return the form of most of a column's first texts."""
-    head = [str(t) for t in texts.slice(0, 400).to_pylist() if t]
-    count = Counter(f for f in map(form_of, head) if f is not None)
-    if not count:
-        return "year first"
-    best = count.most_common(1)[0][0]
-    longer = {"clock": "elapsed hours"}.get(best)
-    if longer and any(form_of(t) is None and ":" in t for t in head):
-        return longer
-    return best
-
-
-def _by_dateutil(text: str, day_first: bool) -> datetime | None:
-    """Return a complete stamp in UTC or without a zone; None for what is none."""
-    from dateutil import parser
-
-    if len(text) > 48 or sum(c.isdigit() for c in text) < 6 or ":" not in text:
-        return None
-    try:
-        with warnings.catch_warnings():
-            warnings.simplefilter("ignore")  # a zone's name that isn't known is passed over
-            one, two = (
-                parser.parse(text, dayfirst=day_first, default=default) for default in _DEFAULTS
-            )
-            if one != two:
-                return None  # dateutil would put today's date where there is none
-            return one if one.tzinfo is None else one.astimezone(UTC)
-    except (ValueError, OverflowError, TypeError, AttributeError):
-        return None
-
-
-def _clock_words(second: float) -> str:
-    whole = int(second)
-    rest = f"{second - whole:.6f}"[1:].rstrip("0").rstrip(".")
-    return f"{whole // 3600:02d}:{whole // 60 % 60:02d}:{whole % 60:02d}{rest}"
-
-
-def _date_words(day: int, second: float) -> str:
-    extra, second = divmod(second, _DAY_S)
-    try:
-        shown = (_EPOCH_DAY + timedelta(days=day + int(extra))).isoformat()
-    except OverflowError:
-        shown = f"day {day}"
-    return f"{shown}T{_clock_words(second)}"
+        return by_continuity(one, two, second, both, (where, name))

@@ -7,12 +7,10 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Protocol
 
-import numpy as np
-
 from ..errors import InputError
 from ..progress import SILENT, Watch
 from .dialects import MISSING
-from .numbers import to_numbers
+from .numbers import Growing, to_numbers
 from .records import Column, FloatArray, Reading, Repair
 
 if TYPE_CHECKING:
@@ -72,11 +70,10 @@ class Log:
         """Return a column's values as logged, NaN where there is no number; shape (rows,)."""
         number = self.column(key).number
         decimal, missing = self.reading.decimal or ".", self.missing
-        parts = [
-            to_numbers(batch.fields[0], decimal, missing).values
-            for batch in self.source.batches([number], watch)
-        ]
-        return np.concatenate(parts) if parts else np.empty(0)
+        out = Growing(self.rows)
+        for batch in self.source.batches([number], watch):
+            out.add(to_numbers(batch.fields[0], decimal, missing).values)
+        return out.finish()
 
     @property
     def missing(self) -> tuple[str, ...]:

@@ -11,10 +11,41 @@ from numpy.typing import NDArray
 
 from .records import FloatArray
 
-__all__ = ["Numbers", "to_numbers"]
+__all__ = ["Growing", "Numbers", "to_numbers"]
 
 # What Arrow is asked to read as a number; RE2.
 _NUMBER = r"^[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?$"
+
+
+class Growing:
+    """One array that grows at its end; parts in a list would need the memory twice when joined.
+
+    Parameters
+    ----------
+    expected : int
+        How many values are expected; memory that isn't filled isn't used either.
+    dtype : type
+        Of the values.
+    """
+
+    def __init__(self, expected: int, dtype: type = float) -> None:
+        # A damaged file may promise any number of rows.
+        self._array: NDArray[Any] = np.empty(min(max(expected, 16), 1 << 26), dtype)
+        self._size = 0
+
+    def add(self, values: NDArray[Any]) -> None:
+        """Append values."""
+        end = self._size + values.size
+        if end > self._array.size:
+            longer = np.empty(max(end, self._array.size * 3 // 2), self._array.dtype)
+            longer[: self._size] = self._array[: self._size]
+            self._array = longer
+        self._array[self._size : end] = values
+        self._size = end
+
+    def finish(self) -> NDArray[Any]:
+        """Return what was added; a view that owns its memory alone."""
+        return self._array[: self._size]
 
 
 @dataclass

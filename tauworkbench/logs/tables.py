@@ -15,7 +15,8 @@ import numpy as np
 from ..errors import InputError, TauError
 from ..progress import Watch, step
 from .dialects import MISSING
-from .layout import kind_of_texts, named_columns
+from .header import named_columns
+from .layout import kind_of_texts
 from .records import Column
 from .text import Batch
 

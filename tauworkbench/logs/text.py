@@ -19,7 +19,8 @@ from numpy.typing import NDArray
 
 from ..errors import InputError
 from ..progress import Watch, step
-from .layout import SPLIT_STAMP, Layout, split_fields
+from .header import split_fields
+from .layout import SPLIT_STAMP, Layout
 
 __all__ = ["Batch", "TextSource", "pieces"]
 
