@@ -9,6 +9,8 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
+from ..campaign.analysis import Analysis, analyse
+from ..campaign.media import MEDIA_COLUMNS, Media, media_rows
 from ..campaign.records import CampaignRun, CampaignSettings
 from ..campaign.rows import RUN_COLUMNS, csv_text, run_rows
 from ..errors import __version__
@@ -40,6 +42,8 @@ class CampaignResult:
         In the order of their paths, failed ones with their line.
     kept : int
         How many runs an earlier campaign had fitted already.
+    analysis : Analysis
+        What the runs say together.
     cautions : tuple of str
         On the campaign itself; each run's own are with the run.
     """
@@ -47,6 +51,7 @@ class CampaignResult:
     settings: CampaignSettings
     table: dict[str, Any]
     runs: tuple[CampaignRun, ...]
+    analysis: Analysis
     kept: int = 0
     cautions: tuple[str, ...] = ()
 
@@ -54,6 +59,11 @@ class CampaignResult:
     def results(self) -> tuple[SavedResult, ...]:
         """Each fitted step."""
         return tuple(r for run in self.runs for r in run.results if isinstance(r, SavedResult))
+
+    @property
+    def media(self) -> tuple[Media, ...]:
+        """Each sensor in each medium at each speed."""
+        return self.analysis.media
 
     @property
     def failed(self) -> tuple[CampaignRun, ...]:
@@ -68,13 +78,14 @@ class CampaignResult:
             "version": CAMPAIGN_VERSION,
             "name": self.settings.name,
             "results": each,
+            **self.analysis.as_dict(),
             "failed": [{"run": r.run, "error": r.error} for r in self.failed],
             "cautions": list(self.cautions),
             "provenance": {"package": f"tauworkbench {__version__}", "settings": self.table},
         }
 
     def save(self, folder: str | os.PathLike[str]) -> Path:
-        """Write ``runs.csv`` and ``campaign.json`` into a folder.
+        """Write ``runs.csv``, ``media.csv`` and ``campaign.json`` into a folder.
 
         Parameters
         ----------
@@ -90,6 +101,7 @@ class CampaignResult:
             folder,
             {
                 "runs.csv": csv_text(RUN_COLUMNS, run_rows(self.runs)),
+                "media.csv": csv_text(MEDIA_COLUMNS, media_rows(self.analysis.media)),
                 "campaign.json": json_text(self.as_dict()),
             },
         )
@@ -125,12 +137,14 @@ def campaign(
     file = read_campaign(path)
     outcomes = _fit(file.runs, watch, refit, processes)
     runs = tuple(_run(f.run, outcome) for f, outcome in zip(file.runs, outcomes, strict=True))
+    analysis = analyse(runs, file.settings)
     return CampaignResult(
         settings=file.settings,
         table=file.table,
         runs=runs,
         kept=sum(bool(o.get("kept")) for o in outcomes),
-        cautions=file.cautions,
+        analysis=analysis,
+        cautions=(*file.cautions, *analysis.cautions),
     )
 
 
