@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Any
@@ -16,7 +16,7 @@ from ..progress import SILENT, Watch
 from ..units import canonical, convert, dimension, parse_unit
 from .clock import NumberTimes, StampTimes, Times
 from .log import Log
-from .numbers import Growing, to_numbers
+from .numbers import Growing, NumberTaker
 from .records import Channels, Column
 from .timebase import Use, Work, check_enough, fill, look_through, merge, on_log_time, order
 
@@ -173,74 +173,67 @@ def _read(
     watch: Watch,
 ) -> tuple[Times, Work, NDArray[np.bool_] | None]:
     """Read all columns in use in one pass."""
-    decimal, missing = log.reading.decimal or ".", log.missing
-    numbers = list(dict.fromkeys(c.number for c in columns.values()))
-    picked = log.column(chosen["column"], "[log] object") if chosen else None
-    if picked is not None and picked.number not in numbers:
-        numbers.append(picked.number)
-    time = columns["time"]
-    clock: Any = NumberTimes(named["time"][0], decimal, missing, log.rows)
-    if time.kind != "number":
-        clock = StampTimes(log.reading.day_first, log.rows)
-    parts = {role: Growing(log.rows) for role in columns if role != "time"}
-    strange: dict[str, list[NDArray[np.intp]]] = {r: [] for r in parts}
-    examples: dict[str, str] = {}
-    total = 0
-    rows, masks, odd, odd_row = Growing(log.rows, np.int64), [], 0, 0
-    values_seen: dict[str, int] = {}
+    decimal, missing, time = log.reading.decimal or ".", log.missing, columns["time"]
+    clock: NumberTimes | StampTimes = StampTimes(log.reading.day_first, log.rows)
+    if time.kind == "number":
+        clock = NumberTimes(named["time"][0], decimal, missing, log.rows)
+    takers = {role: NumberTaker(decimal, missing, log.rows) for role in columns if role != "time"}
+    picker = None if chosen is None else _Picker(log, chosen)
+    used = [*columns.values(), *([] if picker is None else [picker.column])]
+    numbers = list(dict.fromkeys(c.number for c in used))
+    rows, odd, odd_row = Growing(log.rows, np.int64), 0, 0
     for batch in log.source.batches(numbers, watch):
         by_number = dict(zip(numbers, batch.fields, strict=True))
         rows.add(batch.rows)
         odd, odd_row = odd + batch.odd_rows, odd_row or batch.odd_example
         clock.add(by_number[time.number])
-        for role, pieces in parts.items():
-            found = to_numbers(by_number[columns[role].number], decimal, missing)
-            pieces.add(found.values)
-            strange[role].append(found.unreadable + total)
-            examples[role] = examples.get(role) or found.example
-        total += batch.rows.size
-        if picked is not None and chosen is not None:
-            masks.append(_same(by_number[picked.number], str(chosen["value"]), values_seen))
-    name = time.short_name or f"number {time.number}"
-    times = clock.finish("[log] time", name)
-    values = {role: pieces.finish() for role, pieces in parts.items()}
-    work = Work(times.seconds, values, rows.finish())
+        for role, taker in takers.items():
+            taker.add(by_number[columns[role].number])
+        if picker is not None:
+            picker.add(by_number[picker.column.number])
+    times = clock.finish("[log] time", time.short_name or f"number {time.number}")
+    work = Work(times.seconds, {role: t.finish() for role, t in takers.items()}, rows.finish())
     work.notes += times.notes
     work.say("rows of another width", odd, f"{odd} rows with another number of fields than the "
              f"rest were left out, the first is row {odd_row}")  # fmt: skip
-    for role, parts_of_role in strange.items():
-        at = np.concatenate(parts_of_role or [np.empty(0, np.intp)])
-        count = int(np.isfinite(times.seconds[at]).sum())  # without a time the row goes anyway
+    for role, taker in takers.items():
+        # Where the time is unreadable too, the row goes anyway.
+        count = int(np.isfinite(times.seconds[taker.unreadable]).sum())
         work.say("unreadable", count, f'{count} fields of the {role} column hold no number ("'
-                 f'{examples[role]}", say) and count as missing')  # fmt: skip
-    return times, work, _picked(masks, chosen, values_seen)
+                 f'{taker.example}", say) and count as missing')  # fmt: skip
+    return times, work, None if picker is None else picker.finish()
 
 
-def _same(column: Any, value: str, seen: dict[str, int]) -> NDArray[np.bool_]:
-    """Return the rows of a long-format file that belong to one object."""
-    import pyarrow as pa
-    import pyarrow.compute as pc
+class _Picker:
+    """Which rows of a long-format file belong to one object."""
 
-    texts = pc.utf8_trim_whitespace(pc.cast(column, pa.string()))
-    for text in pc.unique(texts).to_pylist()[:50]:
-        if text and len(seen) < 50:
-            seen[str(text)] = 1
-    mask = pc.fill_null(pc.equal(texts, value.strip()), False)
-    return np.asarray(mask.to_numpy(zero_copy_only=False), dtype=bool)
+    def __init__(self, log: Log, chosen: Mapping[str, Any]) -> None:
+        self.column = log.column(chosen["column"], "[log] object")
+        self._value = str(chosen["value"]).strip()
+        self._masks: list[NDArray[np.bool_]] = []
+        self._seen: dict[str, None] = {}
 
+    def add(self, column: Any) -> None:
+        """Take the column's next piece."""
+        import pyarrow as pa
+        import pyarrow.compute as pc
 
-def _picked(
-    masks: Sequence[NDArray[np.bool_]], chosen: Mapping[str, Any] | None, seen: Mapping[str, int]
-) -> NDArray[np.bool_] | None:
-    if chosen is None:
-        return None
-    mask = np.concatenate(masks) if masks else np.zeros(0, bool)
-    if not mask.any():
-        near = difflib.get_close_matches(str(chosen["value"]), list(seen), n=1, cutoff=0.6)
-        shown = ", ".join(f'"{s}"' for s in list(seen)[:10]) or "empty"
+        texts = pc.utf8_trim_whitespace(pc.cast(column, pa.string()))
+        if len(self._seen) < 50:
+            self._seen |= dict.fromkeys(str(t) for t in pc.unique(texts).to_pylist()[:50] if t)
+        mask = pc.fill_null(pc.equal(texts, self._value), False)
+        self._masks.append(np.asarray(mask.to_numpy(zero_copy_only=False), dtype=bool))
+
+    def finish(self) -> NDArray[np.bool_]:
+        """Return the rows' mask; refuse an object that has none."""
+        mask = np.concatenate(self._masks) if self._masks else np.zeros(0, bool)
+        if mask.any():
+            return mask
+        near = difflib.get_close_matches(self._value, list(self._seen), n=1, cutoff=0.6)
+        shown = ", ".join(f'"{s}"' for s in list(self._seen)[:10]) or "empty"
+        name = self.column.short_name or f"number {self.column.number}"
         raise InputError(
             "[log] object",
-            f'no row has "{chosen["value"]}" in column "{chosen["column"]}"',
+            f'no row has "{self._value}" in column "{name}"',
             f'did you mean "{near[0]}"?' if near else f"the values there are {shown}",
         )
-    return mask

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from ..errors import InputError
 from ..units import convert
 from .dates import by_continuity, by_dateutil, clock_words, commonest, date_words
-from .numbers import Growing, to_numbers
+from .numbers import Growing, NumberTaker
 from .records import FloatArray
 from .stamps import FORMS, Parts, is_dated, parts_of
 
@@ -85,16 +85,12 @@ class NumberTimes:
     def __init__(
         self, unit: str | None, decimal: str, missing: tuple[str, ...], expected: int = 0
     ) -> None:
-        self._unit, self._decimal, self._missing = unit, decimal, missing
-        self._values = Growing(expected)
-        self._unreadable, self._example = 0, ""
+        self._unit = unit
+        self._taker = NumberTaker(decimal, missing, expected)
 
     def add(self, column: Any) -> None:
         """Take the column's next piece."""
-        found = to_numbers(column, self._decimal, self._missing)
-        self._values.add(found.values)
-        self._unreadable += found.unreadable.size
-        self._example = self._example or found.example
+        self._taker.add(column)
 
     def finish(self, where: str, name: str) -> Times:
         """Return all times.
@@ -104,7 +100,7 @@ class NumberTimes:
         InputError
             Where the unit isn't known.
         """
-        values: FloatArray = self._values.finish()
+        values = self._taker.finish()
         notes = []
         unit = self._unit
         if unit is None:
@@ -117,7 +113,11 @@ class NumberTimes:
             notes.append(f'the numbers in "{name}" were taken as {unit} since 1970-01-01')
         seconds = convert(values, unit, "s")
         out = Times(
-            seconds, "number", unreadable=self._unreadable, example=self._example, notes=notes
+            seconds,
+            "number",
+            notes=notes,
+            unreadable=self._taker.unreadable.size,
+            example=self._taker.example,
         )
         first = out.first_s
         out.origin = f'{first:.9g} s in "{name}"' if np.isfinite(first) else ""

@@ -15,6 +15,7 @@ __all__ = ["header_of", "named_columns", "split_fields"]
 _BRACKETED = re.compile(
     r"^(?P<name>.*?)\s*(?:\[(?P<a>[^\[\]]*)\]|\((?P<b>[^()]*)\))\s*$", re.DOTALL
 )
+_LONGEST_NAME = 400  # the pattern may need the square of it
 _QUOTED_WORDS = re.compile(r'"([^"]*)"|(\S+)')
 
 
@@ -46,7 +47,7 @@ def named_columns(
 
 def _bracketed(name: str) -> tuple[str, str]:
     """Return a header without its bracketed unit, and the unit."""
-    match = _BRACKETED.match(name)
+    match = _BRACKETED.match(name) if len(name) <= _LONGEST_NAME else None
     if match is None or not match["name"]:
         return name, ""
     unit = parse_unit(match["a"] if match["a"] is not None else match["b"])

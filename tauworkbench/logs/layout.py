@@ -20,6 +20,7 @@ _NUMBER = {
     ",": re.compile(r"[+-]?(\d+,?\d*|,\d+)([eE][+-]?\d+)?"),
 }
 _MOST_COLUMNS = 4096
+_LONGEST_NUMBER = 64  # a pattern may need the square of a field's length
 SPLIT_STAMP = re.compile(r"(:\d\d),(\d{3})(?=,)")
 
 
@@ -152,7 +153,11 @@ def _score(lines: Sequence[str], delimiter: str, decimal: str) -> float:
 
 
 def _is_value(field: str, decimal: str) -> bool:
-    return is_stamp(field) or _NUMBER[decimal].fullmatch(field) is not None
+    return is_stamp(field) or _is_number(field, decimal)
+
+
+def _is_number(field: str, decimal: str) -> bool:
+    return len(field) <= _LONGEST_NUMBER and _NUMBER[decimal].fullmatch(field) is not None
 
 
 def _kind(field: str, decimal: str, missing: Sequence[str]) -> str:
@@ -160,7 +165,7 @@ def _kind(field: str, decimal: str, missing: Sequence[str]) -> str:
         return "empty"
     if is_stamp(field):
         return "stamp"
-    if _NUMBER[decimal].fullmatch(field):
+    if _is_number(field, decimal):
         return "number"
     return "missing" if field.casefold() in missing else "text"
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from .records import FloatArray
 
-__all__ = ["Growing", "Numbers", "to_numbers"]
+__all__ = ["Growing", "NumberTaker", "to_numbers"]
 
 # What Arrow is asked to read as a number; RE2.
 _NUMBER = r"^[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?$"
@@ -55,6 +55,40 @@ class Numbers:
     values: FloatArray
     unreadable: NDArray[np.intp] = field(default_factory=lambda: np.empty(0, np.intp))
     example: str = ""
+
+
+class NumberTaker:
+    """A column of numbers, taken piece by piece.
+
+    Attributes
+    ----------
+    example : str
+        The first field that was neither a number nor missing.
+    """
+
+    def __init__(self, decimal: str, missing: Sequence[str], expected: int) -> None:
+        self._decimal, self._missing = decimal, missing
+        self._values = Growing(expected)
+        self._size = 0
+        self._unreadable: list[NDArray[np.intp]] = []
+        self.example = ""
+
+    def add(self, column: Any) -> None:
+        """Take the column's next piece."""
+        found = to_numbers(column, self._decimal, self._missing)
+        self._values.add(found.values)
+        self._unreadable.append(found.unreadable + self._size)
+        self._size += found.values.size
+        self.example = self.example or found.example
+
+    @property
+    def unreadable(self) -> NDArray[np.intp]:
+        """Where fields were neither numbers nor missing."""
+        return np.concatenate([np.empty(0, np.intp), *self._unreadable])
+
+    def finish(self) -> FloatArray:
+        """Return all values, NaN where there is none."""
+        return self._values.finish()
 
 
 def to_numbers(column: Any, decimal: str, missing: Sequence[str]) -> Numbers:
