@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from ..records import NoiseSummary, Reader
 from ..uncertainty import Quantity
 from .candidates import Fitted
@@ -15,6 +17,8 @@ ENOUGH_TIME_CONSTANTS = 5.0
 # The share of t50 that the step's formation and the reader's response may each take; from a
 # national thermocouple standard's test method (number not shown where it was seen).
 FORMATION_SHARE = 0.1
+# Drift of the medium over the step: same source.
+DRIFT_SHARE = 0.01
 
 
 def reservations(
@@ -39,6 +43,7 @@ def reservations(
             "seen; the response times are those of the two time constants in series"
         )
     words += _record_length(record, fitted, quantities)
+    words += _baseline(record, fitted, quantities)
     words += _noise(noise)
     words += _formation(quantities, settings, reader)
     words += [
@@ -64,6 +69,28 @@ def _record_length(record: Record, fitted: Fitted, quantities: dict[str, Quantit
     words = (
         f"the record covers {covered:.1f} time constants after the onset, and at least "
         f"{ENOUGH_TIME_CONSTANTS:g} are wanted{became}; log for longer, until the reading settles"
+    )
+    return [words]
+
+
+def _baseline(record: Record, fitted: Fitted, quantities: dict[str, Quantity]) -> list[str]:
+    """Return what to say of a medium that moved before the step."""
+    if fitted.form.onset not in ("found", "given") or "start_c" not in quantities:
+        return []
+    begin = quantities["onset_s"].value if "onset_s" in quantities else fitted.model.onset_s
+    first = int(np.searchsorted(record.time_s, begin))
+    half = first // 2
+    if half < 5:
+        return []
+    before = record.value[:first]
+    apart = 2 * float(np.mean(before[half:]) - np.mean(before[:half]))
+    step = abs(quantities["final_c"].value - quantities["start_c"].value)
+    u = 4 * record.noise_k / float(np.sqrt(half))
+    if abs(apart) <= max(DRIFT_SHARE * step, 3 * u):
+        return []
+    words = (
+        f"the level before the step moved by {apart:+.2g} K, {100 * abs(apart) / step:.1f} % of "
+        f"the step where {100 * DRIFT_SHARE:g} % is usual: wait for rest, or begin the window later"
     )
     return [words]
 

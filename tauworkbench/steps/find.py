@@ -25,6 +25,8 @@ _LEAST_EXPLAINED = 0.80
 _LEAST_SHARE = 0.1
 _BLOCKS = 120
 _PIECE_BLOCKS = 150
+# What a baseline may still move by, as a share of the step that follows it.
+_FLAT = 5e-4
 _LOOK = 20_000
 _SEARCHED = 20_000
 # Five samples make a baseline; with fewer, onset and amplitude are one and the same thing.
@@ -294,7 +296,7 @@ def _piece(record: _Record, blocks: Blocks, number: int, place: int, stop: int) 
     level = float(np.mean(value[max(place - 3, 0) : max(place - 1, 1)]))
     final = float(np.mean(value[max(stop - 3, place) : stop]))
     # The baseline reaches back as far as it is flat: what the step before left behind isn't one.
-    flat = max(0.01 * abs(final - level), 4 * record.noise_k / np.sqrt(blocks.count[0]))
+    flat = max(_FLAT * abs(final - level), 4 * record.noise_k / np.sqrt(blocks.count[0]))
     first = max(place - 2, 0)
     while first > 0 and abs(value[first - 1] - level) < flat:
         first -= 1

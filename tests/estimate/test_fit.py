@@ -291,3 +291,12 @@ def test_impossible_samples_are_refused_above_one_percent(bad, refused):
         return
     with pytest.raises(EstimateError, match=r"20 of the 1200 samples.*1 % are allowed"):
         tw.fit_step(made)
+
+
+def test_moving_baseline_is_named():
+    made = trace(2, (6.0,), steps=((40.0, 40.0),), length_s=140)
+    drift = np.where(made.time_s < 40, 0.03 * (made.time_s - 40), 0.0)
+    estimate = tw.fit_step(made.but(temperature_c=made.temperature_c + drift))
+    assert any("the level before the step moved by +1.2 K, 3.0 %" in c for c in estimate.cautions)
+    still = tw.fit_step(made)
+    assert not any("moved by" in c for c in still.cautions)
