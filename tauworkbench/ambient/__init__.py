@@ -1,0 +1,1 @@
+"""Recovery of the ambient behind a lagged reading, with a band; a filter for firmware."""

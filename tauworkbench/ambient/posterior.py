@@ -1,0 +1,109 @@
+"""Means and variances of what a solution says about ambient and reading, at any times."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from ..records import FloatArray
+from .inverse import inverse_band
+from .knots import Knots
+from .moments import place
+from .system import Solution
+
+__all__ = ["Posterior", "polynomials"]
+
+
+def polynomials(knots: Knots, table: FloatArray, beta: FloatArray) -> FloatArray:
+    """Polynomial in ``u`` of each cell, shape (degree + 1, cells)."""
+    parts = np.array([beta[knots.alive(i)] for i in range(knots.degree + 1)])
+    out = table[0].T @ parts
+    own = np.flatnonzero(knots.kind)
+    out[:, own] = np.einsum("ic,cik->kc", parts[:, own], table[knots.kind[own]])
+    return np.asarray(out)
+
+
+@dataclass(frozen=True, eq=False)
+class Posterior:
+    """A solution with the band of its inverse, taken when a variance is first wanted."""
+
+    solution: Solution
+
+    @property
+    def knots(self) -> Knots:
+        """The spline space."""
+        return self.solution.system.knots
+
+    @cached_property
+    def ambient_table(self) -> FloatArray:
+        """Tables that make the ambient."""
+        return self.knots.operator(self.solution.system.chain.ambient_terms())
+
+    @cached_property
+    def reading_table(self) -> FloatArray:
+        """Tables that make the reading."""
+        return self.knots.operator(self.solution.system.chain.reading_terms())
+
+    @cached_property
+    def inverse(self) -> FloatArray:
+        """Band of (N + lambda K)^-1, lower form."""
+        return inverse_band(self.solution.factor)
+
+    def mean(self, table: FloatArray, time_s: FloatArray) -> FloatArray:
+        """Evaluate the fit [K]."""
+        return self.of(self.solution.beta, table, time_s)
+
+    def of(self, beta: FloatArray, table: FloatArray, time_s: FloatArray) -> FloatArray:
+        """Evaluate any coefficients on the same knots [K]."""
+        return place(self.knots, time_s, polynomials(self.knots, table, beta))[0]
+
+    def variance(self, table: FloatArray, time_s: FloatArray) -> FloatArray:
+        """Posterior variance [K^2], at the solution's smoothness and noise."""
+        square = place(self.knots, time_s, self._squares(table))[0]
+        return np.maximum(square, 0.0) * self.solution.variance
+
+    def both(self, table: FloatArray, time_s: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Mean [K] and posterior variance [K^2]."""
+        own = polynomials(self.knots, table, self.solution.beta)
+        mean, square = place(self.knots, time_s, own, self._squares(table))
+        return mean, np.maximum(square, 0.0) * self.solution.variance
+
+    def _squares(self, table: FloatArray) -> FloatArray:
+        """Polynomial of the variance in each cell, per unit noise; (2 degree + 1, cells)."""
+        knots, size = self.knots, self.knots.degree + 1
+        pairs = [(i, j) for i in range(size) for j in range(i, size)]
+        twice = np.array([1.0 if i == j else 2.0 for i, j in pairs])
+        products = [np.convolve(table[0, i], table[0, j]) for i, j in pairs]
+        parts = np.empty((len(pairs), knots.cells))
+        for k, (i, j) in enumerate(pairs):
+            parts[k] = self.inverse[j - i, knots.alive(i)]
+        out = np.asarray((twice[:, None] * np.array(products)).T @ parts)
+        own = np.flatnonzero(knots.kind)
+        out[:, own] = 0.0
+        for k, (i, j) in enumerate(pairs):
+            a, b = table[knots.kind[own], i], table[knots.kind[own], j]
+            out[:, own] += twice[k] * parts[k, own] * _products(a, b).T
+        return out
+
+    def lost_variance(self) -> float:
+        """Variance of the ambient's own wandering too fast for the knots [K^2].
+
+        The tail of its spectrum, q / omega^2m, beyond the knots' own highest frequency, where the
+        data say nothing.
+        """
+        order = self.solution.system.order
+        intensity = self.solution.variance / self.solution.smoothness
+        highest = math.pi / self.knots.interval_s
+        return intensity * highest ** (1 - 2 * order) / (math.pi * (2 * order - 1))
+
+
+def _products(a: FloatArray, b: FloatArray) -> FloatArray:
+    """Products of polynomials, row by row."""
+    size = a.shape[1]
+    out = np.zeros((a.shape[0], 2 * size - 1))
+    for k in range(size):
+        out[:, k : k + size] += a[:, k, None] * b
+    return out
