@@ -1,6 +1,6 @@
 """Make bench.png, the README's picture: the bench on the sample data, in a real browser.
 
-Run it from a checkout with the extra ``test`` installed: ``python notebooks/make_bench_picture.py``.
+Run it in a checkout with the extra ``test`` installed: ``python notebooks/make_bench_picture.py``.
 """
 
 from __future__ import annotations

@@ -13,11 +13,14 @@ import threading
 import time
 import urllib.error
 import urllib.request
+import warnings
 import webbrowser
 from contextlib import suppress
 from dataclasses import dataclass
+from importlib import import_module
 from importlib.util import find_spec
 from pathlib import Path
+from typing import Any
 
 from ..errors import InputError
 from ..session.doorway import LAB, OPEN, page_templates
@@ -130,8 +133,9 @@ def _run_server(room: Path, source: Path, port: int, token: str) -> None:
     os.environ[LAB] = IN_LAB.path
     # The token in the environment, not among the arguments, which every user of the machine sees.
     os.environ["JUPYTER_TOKEN"] = token
-    from jupyterlab.labapp import LabApp
-
+    lab: Any = import_module("jupyterlab.labapp")
+    if not sys.warnoptions:  # what Jupyter's parts say of each other is of no use to the user
+        warnings.simplefilter("ignore")
     settings = {"websocket_max_message_size": _MESSAGE_BYTES, "mathjax_url": "/static/none.js"}
     arguments = [
         f"--ServerApp.ip={HOST}",
@@ -141,6 +145,7 @@ def _run_server(room: Path, source: Path, port: int, token: str) -> None:
         f"--ServerApp.root_dir={room}",
         "--ServerApp.answer_yes=True",
         "--ServerApp.log_level=ERROR",
+        "--LabApp.log_level=ERROR",
         f"--ServerApp.tornado_settings={settings!r}",
         "--ServerApp.jpserver_extensions={'jupyterlab': True, 'voila.server_extension': True}"
         if find_spec("voila")
@@ -153,7 +158,7 @@ def _run_server(room: Path, source: Path, port: int, token: str) -> None:
     if hasattr(os, "geteuid") and os.geteuid() == 0:
         arguments.append("--ServerApp.allow_root=True")
     with suppress(SystemExit):
-        LabApp.launch_instance(argv=arguments)
+        lab.LabApp.launch_instance(argv=arguments)
 
 
 def _announce(port: int, url: str, browser: bool) -> None:

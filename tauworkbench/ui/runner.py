@@ -15,7 +15,7 @@ from typing import Protocol
 from ..errors import Cancelled
 from .screen import ProgressShown
 
-__all__ = ["Job", "Runner"]
+__all__ = ["Home", "Job", "Runner"]
 
 _EVERY_S = 0.1  # no more progress than the eye can follow
 
@@ -67,6 +67,29 @@ class Job:
         except Exception as e:  # noqa: BLE001 - whatever it is, the page must say so
             return e
         return None
+
+
+class Home:
+    """The thread and the loop on which the page lives: everything is set there and only there.
+
+    A front end may deliver what the user does in another thread of the kernel (JupyterLab does).
+    """
+
+    def __init__(self) -> None:
+        self._loop = _running_loop()
+        self._thread = threading.get_ident()
+
+    @property
+    def here(self) -> bool:
+        """Whether this is the page's own thread."""
+        return self._loop is None or threading.get_ident() == self._thread
+
+    def run(self, call: Callable[[], None]) -> None:
+        """Call on the page's own thread: at once if this is it, else as soon as it is free."""
+        if self.here or self._loop is None:
+            call()
+        elif not self._loop.is_closed():
+            self._loop.call_soon_threadsafe(call)
 
 
 class Runner:

@@ -9,6 +9,7 @@ from ..estimate.record import Estimate
 from ..records import FloatArray
 
 __all__ = [
+    "UNDER_WAY",
     "Code",
     "Curve",
     "FieldShown",
@@ -23,6 +24,8 @@ __all__ = [
     "Status",
 ]
 
+# What the costly stages are called while they run.
+UNDER_WAY = {"log": "reading the log", "estimates": "fitting"}
 Control = Literal["text", "choice", "suggestions"]
 
 

@@ -19,7 +19,16 @@ from .code import code_of
 from .fields import Typed, field_shown, missing_words
 from .parts import PARTS, Part
 from .picture import curve_of, full_of, markers_of, plot_of, step_of
-from .screen import FieldShown, History, PartShown, ProgressShown, ResultShown, Screen, Status
+from .screen import (
+    UNDER_WAY,
+    FieldShown,
+    History,
+    PartShown,
+    ProgressShown,
+    ResultShown,
+    Screen,
+    Status,
+)
 
 __all__ = ["State", "done_parts", "screen_of"]
 
@@ -185,9 +194,7 @@ def _words(part: Part, state: State, found: Resolved, error: InputError | None) 
         return words.done_words(part.name, state, found)
     pending = {p.stage for p in found.pending}
     if pending & set(part.stages):
-        if state.progress is not None:
-            return "under way"
-        return "stopped" if state.stopped else "ready"
+        return "stopped" if state.stopped else "under way"
     return part.waits_for or "needs: a log"
 
 
@@ -206,7 +213,7 @@ def _status(state: State, found: Resolved) -> Status:
     if state.notice:
         return Status(state.notice, "problem")
     if state.progress is not None:
-        return Status(state.progress.words.capitalize(), "busy")
+        return Status(f"{state.progress.words} ...".capitalize(), "busy")
     if state.saved:
         return Status(state.saved)
     if "result" in found.values and state.answer is not None:
@@ -220,4 +227,8 @@ def _status(state: State, found: Resolved) -> Status:
             return Status(f"{part.title}: {words.error_words(error)}", "problem")
     if state.stopped:
         return Status("Stopped. Fit starts it again.")
+    if found.pending:  # it starts as soon as the hand rests
+        return Status(
+            f"{UNDER_WAY.get(found.pending[0].stage, 'working')} ...".capitalize(), "busy"
+        )
     return Status(Path(state.choices.log.file or "").name)

@@ -6,12 +6,11 @@ from collections.abc import Callable
 
 from ..session.stages import Pending
 from .runner import Runner
-from .screen import ProgressShown
+from .screen import UNDER_WAY, ProgressShown
 
 __all__ = ["Work"]
 
 _WAIT_S = 0.25  # a fit starts when the hand has rested this long
-_UNDER_WAY = {"log": "reading the log", "estimates": "fitting"}
 
 
 class Work:
@@ -74,7 +73,7 @@ class Work:
         first = next((p for p in self._pending if p.key == key), None)
         if first is None or key in (self._runner.key, self._left):
             return
-        self._on_progress(ProgressShown(_UNDER_WAY.get(first.stage, first.stage)))
+        self._on_progress(ProgressShown(UNDER_WAY.get(first.stage, first.stage)))
         self._runner.start(first)
 
     def _ended(self, key: str, error: Exception | None) -> None:

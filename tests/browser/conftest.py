@@ -55,8 +55,8 @@ def served(tmp_path_factory):
 def context(browser):
     """A browser window of its own."""
     made = browser.new_context(viewport={"width": 1280, "height": 900}, color_scheme="light")
-    made.set_default_timeout(30_000)
-    made.set_default_navigation_timeout(60_000)
+    made.set_default_timeout(60_000)
+    made.set_default_navigation_timeout(90_000)
     yield made
     made.close()
 

@@ -8,7 +8,7 @@ import re
 import signal
 import subprocess
 import sys
-import threading
+import time
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
@@ -30,7 +30,7 @@ CHROMIUM_ARGUMENTS = [
 class Served:
     """A running ``tauworkbench open``."""
 
-    process: subprocess.Popen[str]
+    process: subprocess.Popen[bytes]
     url: str
     folder: Path
 
@@ -66,33 +66,33 @@ def serve(home: Path, folder: Path, *arguments: str, timeout_s: float = 90.0) ->
     """Run ``tauworkbench open --no-browser`` until the block ends."""
     home.mkdir(exist_ok=True, parents=True)
     folder.mkdir(exist_ok=True, parents=True)
-    process = subprocess.Popen(
-        [*COMMAND, "open", "--no-browser", *arguments],
-        cwd=folder,
-        env=clean_environment(home),
-        text=True,
-        stdout=subprocess.PIPE,
-        stderr=subprocess.STDOUT,
-        start_new_session=True,
-    )
-    killer = threading.Timer(timeout_s, lambda: _stop(process))
-    killer.start()
-    said = []
+    said = home / "said.txt"  # a pipe would fill up and stop the server
+    with said.open("w") as stream:
+        process = subprocess.Popen(
+            [*COMMAND, "open", "--no-browser", *arguments],
+            cwd=folder,
+            env=clean_environment(home),
+            stdout=stream,
+            stderr=subprocess.STDOUT,
+            start_new_session=True,
+        )
     try:
-        for line in process.stdout or ():
-            said.append(line)
-            found = re.search(r"http://127\.0\.0\.1:\d+\S+", line)
-            if found:
-                killer.cancel()
-                yield Served(process, found[0], folder)
-                return
-        raise AssertionError(f"no address was printed: {''.join(said)[-3000:]}")
+        yield Served(process, _address(process, said, timeout_s), folder)
     finally:
-        killer.cancel()
         _stop(process)
 
 
-def _stop(process: subprocess.Popen[str]) -> None:
+def _address(process: subprocess.Popen[bytes], said: Path, timeout_s: float) -> str:
+    end = time.monotonic() + timeout_s
+    while time.monotonic() < end and process.poll() is None:
+        found = re.search(r"http://127\.0\.0\.1:\d+\S+", said.read_text())
+        if found:
+            return found[0]
+        time.sleep(0.1)
+    raise AssertionError(f"no address was printed: {said.read_text()[-3000:]}")
+
+
+def _stop(process: subprocess.Popen[bytes]) -> None:
     """Ctrl-C, as a user would, and no mercy after some seconds; only our own process group."""
     with contextlib.suppress(ProcessLookupError):
         os.killpg(process.pid, signal.SIGINT)

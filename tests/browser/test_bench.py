@@ -28,7 +28,7 @@ def headline(page):
 
 def fresh_headline(page, old):
     """The number shown, once it is another than the old one."""
-    end = time.monotonic() + 30
+    end = time.monotonic() + 60
     while (found := headline(page)) == old:
         assert time.monotonic() < end
         page.wait_for_timeout(50)
@@ -60,12 +60,12 @@ def test_from_the_samples_to_a_saved_result(door, opened, served, artifacts):
     page.screenshot(path=artifacts / f"bench-{door}-light.png")
 
     before = page.locator(".tau-marker-onset").get_attribute("aria-valuenow")
-    drag(page, ".tau-marker-onset", 40)
+    drag(page, ".tau-marker-onset", 10)
     page.wait_for_function("document.querySelector('.tau-field-onset input').value !== ''")
     typed = float(field(page, "onset").input_value())
     assert typed > float(before)
     assert float(page.locator(".tau-marker-onset").get_attribute("aria-valuenow")) == typed
-    assert f"onset_s = {typed}" in page.locator(".tau-code pre").first.inner_text()
+    page.locator(".tau-code pre", has_text=f"onset_s = {typed}").wait_for()
     second = fresh_headline(page, first)
     assert second < first  # counted from later
 
@@ -173,7 +173,6 @@ def test_letters_do_not_edit_the_notebook(opened):
 def test_reload_offers_the_work(opened):
     page = opened("page")
     headline(page)
-    type_in(page, "test.operator", "") if field(page, "test.operator").is_visible() else None
     type_in(page, "onset", "11,5")
     page.wait_for_function("document.querySelector('.tau-code pre').innerText.includes('11.5')")
     page.wait_for_timeout(300)
@@ -212,6 +211,7 @@ def test_dark_theme_is_followed(served, browser, artifacts):
     from .served import open_page, wait_for_plot
 
     context = browser.new_context(viewport={"width": 1280, "height": 900}, color_scheme="dark")
+    context.set_default_timeout(60_000)
     page = open_page(context, served("page"))
     wait_for_plot(page)
     headline(page)

@@ -10,7 +10,7 @@ import pytest
 
 from tauworkbench.errors import Cancelled
 from tauworkbench.progress import step
-from tauworkbench.ui.runner import Runner
+from tauworkbench.ui.runner import Home, Runner
 
 
 class Work:
@@ -152,5 +152,22 @@ def test_later_waits_until_the_hand_rests():
         heard.runner.close()
         await asyncio.sleep(0.1)
         assert called == [4]
+
+    asyncio.run(main())
+
+
+def test_what_comes_in_another_thread_is_done_on_the_pages_own():
+    async def main():
+        home, seen = Home(), []
+        assert home.here
+        home.run(lambda: seen.append(threading.current_thread()))
+        other = threading.Thread(
+            target=lambda: home.run(lambda: seen.append(threading.current_thread()))
+        )
+        other.start()
+        other.join()
+        assert len(seen) == 1
+        await until(lambda: len(seen) == 2)
+        assert set(seen) == {threading.main_thread()}
 
     asyncio.run(main())

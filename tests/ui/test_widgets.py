@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import asyncio
 import sys
+import threading
 from pathlib import Path
 
 import ipywidgets as w
@@ -243,6 +245,24 @@ def test_exception_in_a_callback_is_said_and_kept(heard):
     assert "went wrong inside the program" in page._status.value
     assert "Traceback" not in page._status.value
     assert "&lt;nothing&gt;" in page._status.value
+
+
+def test_change_that_comes_in_another_thread_is_never_lost(heard):
+    """JupyterLab delivers in another thread what the user does, also while the page is set."""
+
+    async def main():
+        page = Page(plain=True)
+        where = []
+        page.on_change = lambda name, value: where.append(threading.current_thread())
+        with page.guard:
+            other = threading.Thread(target=page._fit.click)
+            other.start()
+            other.join()
+        assert where == []
+        await asyncio.sleep(0.05)
+        assert where == [threading.main_thread()]
+
+    asyncio.run(main())
 
 
 # ---------------------------------------------------------------------------- upload

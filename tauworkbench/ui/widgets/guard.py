@@ -6,6 +6,8 @@ import traceback
 from collections.abc import Callable
 from typing import Any
 
+from ..runner import Home
+
 __all__ = ["Guard"]
 
 
@@ -25,17 +27,23 @@ class Guard:
         self.errors: list[str] = []
         self.on_error = on_error
         self._quiet = 0
+        self._home = Home()
 
     def __call__(self, function: Callable[..., Any]) -> Callable[..., None]:
-        """Return the function guarded; while the page is being set it isn't called at all."""
+        """Return the function guarded, to be run on the page's own thread.
 
-        def guarded(*args: Any, **kwargs: Any) -> None:
-            if self._quiet:
-                return
+        While the page is being set, what that causes on the page isn't passed on.
+        """
+
+        def run(*args: Any, **kwargs: Any) -> None:
             try:
                 function(*args, **kwargs)
             except Exception as e:  # noqa: BLE001 - a callback has no caller who could care
                 self.keep(e)
+
+        def guarded(*args: Any, **kwargs: Any) -> None:
+            if not (self._quiet and self._home.here):
+                self._home.run(lambda: run(*args, **kwargs))
 
         return guarded
 

@@ -232,7 +232,7 @@ class Page:
         try:
             path = self._incoming.take(content, data)
         except InputError as e:
-            self.on_refused(e)
+            self.guard(self.on_refused)(e)
             return False
         if path is not None:
             self.guard(self._report)("upload", str(path))
