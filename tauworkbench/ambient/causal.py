@@ -119,7 +119,7 @@ def run(model: StateSpace, samples: Samples, noise: float, ahead_s: FloatArray) 
     after, extra = model.over_all(ahead_s) if np.any(ahead_s) else (None, None)
     for k in range(int(length + warm)):
         at = begins + k
-        live = (at < np.minimum(starts + length, n))
+        live = at < np.minimum(starts + length, n)
         if not live.any():
             break
         if not live.all():

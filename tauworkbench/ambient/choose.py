@@ -1,9 +1,9 @@
 """Which smoothness law an ambient follows, by what it says of samples held out.
 
-Orders 1, 2 and 3 are tried without jumps, and order 1 with jumps where any are found. A fifth of the
-samples, in blocks of a third of a time constant, is predicted from the others; the score is the
-mean log density of what was held out. A wrong order gives a wrong band, so the lowest order wins
-where the scores can't tell.
+Orders 1, 2 and 3 are tried without jumps, and order 1 with jumps where any are found. A fifth of
+the samples, in blocks of a third of a time constant, is predicted from the others; the score is
+the mean log density of what was held out. A wrong order gives a wrong band, so the lowest order
+wins where the scores can't tell.
 """
 
 from __future__ import annotations

@@ -62,7 +62,8 @@ def reference(
     for i, a in enumerate(spread):
         if a.shape != time_s.shape or not np.all(np.isfinite(a)) or not np.all(a > 0):
             raise InputError(
-                f"time_constants_s[{i}]", f"has shape {a.shape} or values that are not positive",
+                f"time_constants_s[{i}]",
+                f"has shape {a.shape} or values that are not positive",
                 f"give {time_s.size} positive numbers [s], one per sample",
             )
     slow = max(spread, key=lambda a: float(a.mean()))

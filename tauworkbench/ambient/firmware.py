@@ -20,6 +20,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -37,7 +38,6 @@ CAUTION = (
     "a corrected reading must not replace a qualified sensor in a protective function: it is only "
     "as good as the time constants, which change with medium, flow and mounting"
 )
-_LONGEST_IMPULSE = 1 << 18
 
 
 @dataclass(frozen=True)
@@ -110,7 +110,21 @@ class Correction:
         b, a = np.ones(1), np.ones(1)
         for s in self.sections:
             b, a = np.convolve(b, [s.now, s.before]), np.convolve(a, [1.0, -s.memory])
-        return b, a
+        return np.asarray(b, np.float64), np.asarray(a, np.float64)
+
+    def as_dict(self) -> dict[str, Any]:
+        """Return its numbers as JSON takes them."""
+        b, a = self.coefficients()
+        return {
+            "interval_s": self.interval_s,
+            "smoothing_s": self.smoothing_s,
+            "sections": [[s.now, s.before, s.memory] for s in self.sections],
+            "b": b.tolist(),
+            "a": a.tolist(),
+            "noise_gain": self.noise_gain,
+            "delay_s": self.delay_s,
+            "cautions": list(self.cautions),
+        }
 
     def step_response(self, duration_s: float) -> tuple[FloatArray, FloatArray]:
         """Answer of sensor and correction together to a unit step of the ambient at time 0.
@@ -121,70 +135,9 @@ class Correction:
             From 0 [s].
         response : ndarray, shape (n,)
         """
-        time = self.interval_s * np.arange(int(duration_s / self.interval_s) + 1)
+        count = int(duration_s / self.interval_s) + 1
+        time = np.asarray(self.interval_s * np.arange(count), np.float64)
         return time, self.apply(_sensor_step(self.transfer, time))
-
-    def python_listing(self) -> str:
-        """Return a generator of a few lines that needs no library."""
-        rows = "\n".join(f"    ({s.now!r}, {s.before!r}, {s.memory!r})," for s in self.sections)
-        return f'''# {CAUTION}
-# One reading every {self.interval_s:.9g} s; delay {self.delay_s:.4g} s, noise x {self.noise_gain:.4g}.
-SECTIONS = (
-{rows}
-)
-
-
-def corrected(readings):
-    """Yield the corrected reading for each reading, both in degC."""
-    first, memory = None, [[0.0, 0.0] for _ in SECTIONS]
-    for reading in readings:
-        first = reading if first is None else first
-        x = reading - first
-        for (now, before, back), m in zip(SECTIONS, memory):
-            y = now * x + before * m[0] + back * m[1]
-            m[0], m[1], x = x, y, y
-        yield first + x
-'''
-
-    def c_listing(self, number: str = "double") -> str:
-        """Return the same in C; ``number`` is ``double`` or ``float``."""
-        if number not in ("double", "float"):
-            raise InputError("number", f"{number!r} is no type here", "give 'double' or 'float'")
-        end = "f" if number == "float" else ""
-        rows = ",\n".join(
-            f"    {{{_digits(s.now, end)}, {_digits(s.before, end)}, {_digits(s.memory, end)}}}"
-            for s in self.sections
-        )
-        n = len(self.sections)
-        return f"""/* {CAUTION} */
-/* One reading every {self.interval_s:.9g} s; delay {self.delay_s:.4g} s, noise x {self.noise_gain:.4g}. */
-#define LAG_SECTIONS {n}
-static const {number} lag_section[LAG_SECTIONS][3] = {{
-{rows}
-}};
-struct lag_state {{ int started; {number} first; {number} memory[LAG_SECTIONS][2]; }};
-
-/* Zero the state once; then call with each reading in degC. */
-{number} lag_corrected(struct lag_state *s, {number} reading)
-{{
-    if (!s->started) {{ s->started = 1; s->first = reading; }}
-    {number} x = reading - s->first;
-    for (int i = 0; i < LAG_SECTIONS; i++) {{
-        const {number} *c = lag_section[i];
-        {number} *m = s->memory[i];
-        {number} y = c[0] * x + c[1] * m[0] + c[2] * m[1];
-        m[0] = x;
-        m[1] = x = y;
-    }}
-    return s->first + x;
-}}
-"""
-
-
-def _digits(value: float, end: str) -> str:
-    """A C literal: always with a point or an exponent."""
-    text = repr(value)
-    return (text if any(c in text for c in ".e") else text + ".0") + end
 
 
 def design_correction(
@@ -216,13 +169,11 @@ def design_correction(
     """
     if not 0 < interval_s < math.inf:
         raise InputError("interval_s", f"{interval_s} is not positive", "give seconds > 0")
-    if (noise_gain is None) == (smoothing_s is None):
-        raise InputError(
-            "noise_gain and smoothing_s", "give exactly one", "noise_gain = 2.0, say"
-        )
-    if smoothing_s is None:
-        assert noise_gain is not None
+    if smoothing_s is None and noise_gain is not None:
         smoothing_s = _smoothing_for(transfer, interval_s, noise_gain)
+    elif smoothing_s is None or noise_gain is not None:
+        given = "neither was given" if noise_gain is None else "both were given"
+        raise InputError("noise_gain and smoothing_s", given, "give one: noise_gain = 2.0, say")
     if not 0 < smoothing_s < math.inf:
         raise InputError("smoothing_s", f"{smoothing_s} is not positive", "give seconds > 0")
     sections = _sections(transfer, interval_s, smoothing_s)

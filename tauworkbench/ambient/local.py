@@ -55,9 +55,7 @@ def neighbours(
     return np.maximum(at_s - half_s, low), np.minimum(at_s + half_s, high)
 
 
-def windows(
-    time_s: FloatArray, at_s: FloatArray, bounds: tuple[FloatArray, FloatArray]
-) -> Window:
+def windows(time_s: FloatArray, at_s: FloatArray, bounds: tuple[FloatArray, FloatArray]) -> Window:
     """Gather the samples between each jump's bounds."""
     first = np.searchsorted(time_s, bounds[0], "right")
     last = np.searchsorted(time_s, bounds[1], "left")
@@ -127,14 +125,13 @@ class LocalFits:
         normal += penalty
         step = np.arange(knots.size)
         normal[:, step, step] *= 1 + _RIDGE
-        inverse = np.linalg.inv(normal) if wanted else None
-        if inverse is None:
-            beta = np.linalg.solve(normal, right[..., None])[..., 0]
-        else:
-            beta = (inverse @ right[..., None])[..., 0]
-        cost = squares - np.einsum("jk,jk->j", right, beta)
-        if inverse is None:
+        if not wanted:
+            quick = np.linalg.solve(normal, right[..., None])[..., 0]
+            cost = squares - np.einsum("jk,jk->j", right, quick)
             return Answers(cost, np.zeros(0), np.zeros(0))
+        inverse = np.asarray(np.linalg.inv(normal), np.float64)
+        beta: FloatArray = np.einsum("jab,jb->ja", inverse, right)
+        cost = squares - np.einsum("jk,jk->j", right, beta)
         mean, variance = self._ambient(knots, shift_s, beta, inverse)
         return Answers(cost, mean, variance)
 
@@ -147,8 +144,8 @@ class LocalFits:
         inside = (cell >= 0) & (cell < knots.cells)
         cell = np.clip(cell, 0, knots.cells - 1)
         middle = (knots.breaks[:-1] + knots.breaks[1:]) / 2
-        u = (after - middle[cell]) / np.diff(knots.breaks)[cell]
-        return cell, np.clip(u, -0.5, 0.5), inside.astype(float)
+        u = np.clip((after - middle[cell]) / np.diff(knots.breaks)[cell], -0.5, 0.5)
+        return cell, np.asarray(u, np.float64), inside.astype(np.float64)
 
     def _equations(
         self, knots: Knots, shift_s: FloatArray
@@ -165,7 +162,9 @@ class LocalFits:
         for k in range(2 * size - 1):
             weights[..., k] = np.bincount(bins, power, jumps * knots.cells).reshape(jumps, -1)
             if k < size:
-                values[..., k] = np.bincount(bins, power * y, jumps * knots.cells).reshape(jumps, -1)
+                values[..., k] = np.bincount(bins, power * y, jumps * knots.cells).reshape(
+                    jumps, -1
+                )
             power = power * u
         table = knots.operator(self.chain.reading_terms())[knots.kind]
         products = np.zeros((knots.cells, size, size, 2 * size - 1))
@@ -180,7 +179,7 @@ class LocalFits:
             at = slice(first, first + size)
             normal[:, at, at] += blocks[:, c]
             right[:, at] += sides[:, c]
-        return normal, right, squares
+        return normal, right, np.asarray(squares, np.float64)
 
     def _ambient(
         self, knots: Knots, shift_s: FloatArray, beta: FloatArray, inverse: FloatArray

@@ -32,12 +32,12 @@ class Refit:
     found: Smooth
     cuts: Cuts
 
-    def mean(self, transfer: TransferFunction, samples: Samples, target_s: FloatArray) -> FloatArray:
+    def mean(
+        self, transfer: TransferFunction, samples: Samples, target_s: FloatArray
+    ) -> FloatArray:
         """Recover the ambient at some times [K above the origin]."""
         p, system = self.prepared, self.found.system
-        chain = p.chain.but(
-            time_constants_s=transfer.time_constants_s, zero_s=transfer.zero_s
-        )
+        chain = p.chain.but(time_constants_s=transfer.time_constants_s, zero_s=transfer.zero_s)
         build = builder(samples, chain, system.order, float(target_s[-1]), self.cuts)
         solution = build(system.knots.interval_s).solve(self.found.solution.smoothness)
         posterior = Posterior(solution)
@@ -106,9 +106,7 @@ def off_by(refit: Refit, share: float) -> dict[str, float]:
     return out
 
 
-def law_part(
-    prepared: Prepared, found: Smooth, effects: tuple[Effect, ...]
-) -> FloatArray:
+def law_part(prepared: Prepared, found: Smooth, effects: tuple[Effect, ...]) -> FloatArray:
     """Standard uncertainty of the ambient from law and circuit [K].
 
     Each effect's shift of the reading is sent through the recovery as a reading of its own.
@@ -137,7 +135,7 @@ def smoothness_part(found: Smooth, target_s: FloatArray) -> FloatArray:
 
 def product(band: FloatArray, x: FloatArray) -> FloatArray:
     """Symmetric band (lower form) times a vector."""
-    out = band[0] * x
+    out: FloatArray = band[0] * x
     for d in range(1, band.shape[0]):
         out[d:] += band[d, :-d] * x[:-d]
         out[:-d] += band[d, :-d] * x[d:]

@@ -22,7 +22,6 @@ _FEWEST = 8
 # Rows that repeat the one before are a held display, not samples, where changes are larger than
 # this many of the smallest step, and this share of the rows repeats.
 _COARSE, _SHARE = 4.0, 0.1
-_STRAIGHT = 0.02
 
 
 @dataclass(frozen=True, eq=False)
@@ -79,38 +78,33 @@ def known_sensor(
         raise InputError(
             "sensor and time_constants_s", what, "give one: a fitted sensor or its time constants"
         )
-    if sensor is not None:
+    if time_constants_s is None:
         return KnownSensor.of(sensor), None, ()
-    assert time_constants_s is not None
-    given = [time_constants_s] if np.ndim(time_constants_s) == 0 else list(time_constants_s)
-    fixed, clock, words = reference(time_s, given)
+    fixed, clock, words = reference(time_s, list(time_constants_s))
     return KnownSensor(TransferFunction(fixed, zero_s, dead_time_s)), clock, words
 
 
-def prepare(
-    trace: Trace, known: tuple[KnownSensor, Clock | None, tuple[str, ...]]
-) -> Prepared:
+def prepare(trace: Trace, known: tuple[KnownSensor, Clock | None, tuple[str, ...]]) -> Prepared:
     """Take delays off, weigh the samples and set repeats aside."""
     sensor, clock, cautions = known
     used = trace.kept
     time, reading = trace.time_s[used], trace.temperature_c[used]
     if time.size < _FEWEST:
-        raise InputError(
-            "trace", f"has {time.size} usable samples", f"give {_FEWEST} or more"
-        )
+        raise InputError("trace", f"has {time.size} usable samples", f"give {_FEWEST} or more")
     chain = Chain.of(sensor.transfer, trace.reader)
     weight, sigma = _weights(trace, used)
     held = repeats(reading)
     if held.any():
         weight[held] = 0.0
-        cautions = (
-            *cautions,
+        word = (
             f"{int(held.sum())} of {time.size} rows repeat the one before although the reading "
-            "is fine enough to differ: a held display; the repeats were given no weight",
+            "is fine enough to differ: a held display; the repeats were given no weight"
         )
+        cautions = (*cautions, word)
     if np.count_nonzero(weight) < _FEWEST:
         raise InputError(
-            "trace", f"has {np.count_nonzero(weight)} samples that are no repeats",
+            "trace",
+            f"has {np.count_nonzero(weight)} samples that are no repeats",
             f"give {_FEWEST} or more",
         )
     origin = float(np.mean(reading))

@@ -17,12 +17,13 @@ from ..records import FloatArray, Trace
 from .causal import Traits, filtered
 from .choose import Choice, choose
 from .cuts import NO_CUTS, Cuts, builder
-from .jumps import blend, find_jumps
+from .jumps import find_jumps
 from .parts import Refit, law_part, off_by, sensor_part, smoothness_part
 from .posterior import Posterior
 from .prepare import Prepared, known_sensor, prepare
 from .record import Ambient, Check, Settings
 from .smooth import Scale, Smooth, smooth
+from .suppose import blend
 from .words import cautions_of
 
 __all__ = ["recover_ambient"]
@@ -129,9 +130,7 @@ def _fit(p: Prepared, choice: Choice, watch: Watch) -> tuple[Smooth, Cuts]:
     return found, cuts
 
 
-def _smoothed(
-    p: Prepared, found: Smooth, cuts: Cuts
-) -> tuple[FloatArray, dict[str, FloatArray]]:
+def _smoothed(p: Prepared, found: Smooth, cuts: Cuts) -> tuple[FloatArray, dict[str, FloatArray]]:
     """Ambient [K above the origin] with the parts that noise and smoothness give."""
     posterior = Posterior(found.solution)
     table = posterior.ambient_table
@@ -236,7 +235,7 @@ def _checked(p: Prepared, found: Smooth, residual: FloatArray, causal: bool) -> 
     if not causal:
         interval = float(np.median(np.diff(time)))
         expected = found.scale.expected_correlation(
-            found.solution.smoothness, interval * np.arange(1, lags + 1)
+            found.solution.smoothness, interval * np.arange(1.0, lags + 1.0)
         )
     scaled = residual[informs] * np.sqrt(p.samples.weight[informs])
     return checked(scaled, expected, float(np.sqrt(np.mean(residual[informs] ** 2))))

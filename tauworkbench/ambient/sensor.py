@@ -77,7 +77,8 @@ class KnownSensor:
             )
         except (KeyError, TypeError, AttributeError, ValueError) as error:
             raise InputError(
-                "result", f"isn't the result of one fitted step ({error!r})",
+                "result",
+                f"isn't the result of one fitted step ({error!r})",
                 "give the result.json of a plunge or an air step in the same medium",
             ) from None
         names = tuple(k for k in _NAMES if k in value)
@@ -135,7 +136,8 @@ def lengths(values: Sequence[Any]) -> int | None:
     sizes = {np.asarray(v).size for v in values if np.ndim(v)}
     if len(sizes) > 1:
         raise InputError(
-            "time_constants_s", f"holds columns of {sorted(sizes)} values",
+            "time_constants_s",
+            f"holds columns of {sorted(sizes)} values",
             "give each time constant for every sample",
         )
     return sizes.pop() if sizes else None

@@ -71,17 +71,16 @@ class Scale:
 
     def frequency(self, smoothness: float) -> float:
         """Angular frequency at which the recovery falls to a half [rad/s]."""
-        at = np.interp(
-            math.log(smoothness), self.log_smoothness[::-1], np.log(self.omega)[::-1]
-        )
+        at = np.interp(math.log(smoothness), self.log_smoothness[::-1], np.log(self.omega)[::-1])
         return math.exp(float(at))
 
     def noise_gain(self, smoothness: float) -> float:
         """Noise of the recovered ambient over that of a sample, from noise alone."""
         response = np.abs(self.chain.response(self.omega)) ** 2 + 1e-300
         ratio = smoothness * self.omega ** (2 * self.order) / (response * self.per_second)
-        square = np.trapezoid(1 / response / (1 + ratio) ** 2 * self.omega, np.log(self.omega))
-        return math.sqrt(float(square) / (math.pi * self.per_second))
+        density = 1 / response / (1 + ratio) ** 2 * self.omega
+        square = float(np.trapezoid(density, np.log(self.omega)))
+        return float(np.sqrt(square / (math.pi * self.per_second)))
 
     def expected_correlation(self, smoothness: float, lag_s: FloatArray) -> FloatArray:
         """Correlation that the residuals must have at some lags, the noise being white.
@@ -94,13 +93,14 @@ class Scale:
         gain = np.where(self.omega < math.pi * self.per_second, 1 / (1 + ratio), 0.0)
         lags = np.concatenate([[0.0], lag_s])
         waves = gain * np.cos(lags[:, None] * self.omega) * self.omega
-        kernel = np.trapezoid(waves, np.log(self.omega)) / (math.pi * self.per_second)
+        kernel = np.atleast_1d(np.trapezoid(waves, np.log(self.omega)))
+        kernel = kernel / (math.pi * self.per_second)
         return np.asarray(-kernel[1:] / max(1 - kernel[0], 1e-3))
 
     def interval(self, omega: float) -> float:
         """Distance of the knots for this frequency [s]."""
         interval = float(2 * math.pi / (_KNOTS_PER_WAVELENGTH * omega))
-        finest = 4 * math.pi / self.omega[-1]  # half a sampling interval
+        finest = float(4 * math.pi / self.omega[-1])  # half a sampling interval
         return max(min(interval, self.coarsest_s), finest)
 
     def limits(self, interval: float) -> tuple[float, float]:
@@ -129,7 +129,7 @@ class Smooth:
         return self.solution.system
 
 
-def smooth(
+def smooth(  # noqa: PLR0913 - samples, chain and law, then how to search
     samples: Samples,
     chain: Chain,
     order: int,
@@ -162,17 +162,15 @@ def smooth(
     build = builder(samples, chain, order, end_s, cuts)
     omega = start or min(6 / chain.lag_s if chain.lag_s > 0 else 1.0, scale.omega[-1] / 16)
     omega = max(omega, 40 * scale.omega[0])
-    found: Smooth | None = None
-    for _ in range(_TRIES):
+    for attempt in range(_TRIES):
         interval = scale.interval(omega)
         limits = scale.limits(interval)
         begin = min(max(omega, limits[0]), limits[1])
         found = search(build(interval), scale, begin, limits, _NEAR if near else _FAR)
         omega = found.omega
         share = scale.interval(omega) / interval
-        if _GOOD[0] <= share <= _GOOD[1]:
+        if _GOOD[0] <= share <= _GOOD[1] or attempt == _TRIES - 1:
             break
-    assert found is not None
     return found
 
 

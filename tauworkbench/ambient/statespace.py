@@ -123,7 +123,8 @@ class Steady:
         omega = np.geomspace(1e-4, 1.0, 400) * np.pi / interval_s
         back = np.exp(-1j * omega * interval_s)[:, None, None]
         loop = np.eye(self.gain.size) - (self.keep @ self.move) * back
-        driven = np.linalg.solve(loop, np.broadcast_to(self.gain[:, None], (400, *self.gain.shape, 1)))
+        drive = np.broadcast_to(self.gain[:, None], (omega.size, self.gain.size, 1))
+        driven = np.linalg.solve(loop, drive)
         total = np.abs(driven[:, 0, 0] * chain.response(omega))
         below = np.flatnonzero(total < 0.5)
         return float(omega[below[0]] if below.size else omega[-1])

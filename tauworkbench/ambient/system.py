@@ -44,7 +44,9 @@ class System:
     def solve(self, smoothness: float) -> Solution:
         """Solve for one lambda."""
         factor = cholesky_banded(
-            self.normal + smoothness * self.penalty, overwrite_ab=True, lower=True,
+            self.normal + smoothness * self.penalty,
+            overwrite_ab=True,
+            lower=True,
             check_finite=False,
         )
         beta = cho_solve_banded((factor, True), self.right, check_finite=False)
@@ -126,7 +128,7 @@ def _normal_band(knots: Knots, table: FloatArray, weights: FloatArray) -> FloatA
 
 
 def _sandwich(table: FloatArray, moments: FloatArray) -> FloatArray:
-    """table moments table', cell by cell."""
+    """Tables, moments and tables again, cell by cell."""
     return np.asarray(table @ moments @ table.transpose(0, 2, 1))
 
 

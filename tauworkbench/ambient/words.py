@@ -21,11 +21,8 @@ _STRAIGHT = 0.02
 def cautions_of(a: Ambient, p: Prepared) -> Ambient:
     """Return the record with its cautions."""
     words = [*p.cautions, _resolution(a)]
-    for say in (_noise, _whiteness, _exact, _ramp, _averaging):
-        word = say(a, p)
-        if word:
-            words.append(word)
-    return replace(a, cautions=tuple(words))
+    words += [_noise(a, p), _whiteness(a), _exact(a, p), _ramp(a), _averaging(a, p)]
+    return replace(a, cautions=tuple(w for w in words if w))
 
 
 def _resolution(a: Ambient) -> str:
@@ -46,7 +43,7 @@ def _noise(a: Ambient, p: Prepared) -> str:
     )
 
 
-def _whiteness(a: Ambient, p: Prepared) -> str:
+def _whiteness(a: Ambient) -> str:
     if a.check.white:
         return ""
     return (
@@ -61,12 +58,16 @@ def _exact(a: Ambient, p: Prepared) -> str:
     stated = bool(p.sensor.names)
     return (
         f"time constants off by 20 % would move the ambient by {worst:.3g} K rms, which no band "
-        + ("beyond their stated uncertainty covers" if stated else "here covers: they were taken "
-           "as exact; give a fitted sensor to carry their uncertainty along")
+        + (
+            "beyond their stated uncertainty covers"
+            if stated
+            else "here covers: they were taken "
+            "as exact; give a fitted sensor to carry their uncertainty along"
+        )
     )
 
 
-def _ramp(a: Ambient, p: Prepared) -> str:
+def _ramp(a: Ambient) -> str:
     t, y = a.time_s, a.ambient_c
     slope, rest = _line(t, y)
     rise = abs(slope) * float(t[-1] - t[0])
