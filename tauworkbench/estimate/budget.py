@@ -104,10 +104,8 @@ def _onset(part: Part, settings: FitSettings) -> list[BudgetLine]:
         limit = part.quantities.get("time_constant_2_s")
         fast = taus[1] if len(taus) > 1 and limit else 0.0
         hidden = hidden_lag_s(taus[0], fast) if fast else 0.0
-        # the truth lies anywhere between nothing hidden and all of it: a rectangle from zero
-        return [
-            BudgetLine("found onset (hidden fast response)", hidden / math.sqrt(3), False, "high")
-        ]
+        # the truth lies between nothing hidden and all of it: with a factor of two, all of it
+        return [BudgetLine("found onset (hidden fast response)", hidden / 2, False, "high")]
     if part.fitted.form.onset == "given" and settings.onset_u_s:
         # a later onset is a curve moved by so much against the fitted one's time axis
         at = part.record.time_s
