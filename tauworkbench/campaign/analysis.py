@@ -10,6 +10,7 @@ from ..result import jsonable
 from .comparison import Comparison, compare
 from .media import Media, media_rows, pool_media
 from .records import CampaignRun, CampaignSettings
+from .speed import SensorSpeedLaw, speed_laws
 
 __all__ = ["Analysis", "analyse"]
 
@@ -21,12 +22,14 @@ class Analysis:
     Attributes
     ----------
     media : tuple of Media
+    speed_laws : tuple of SensorSpeedLaw
     comparisons : tuple of Comparison
     cautions : tuple of str
         Of all of them, each once.
     """
 
     media: tuple[Media, ...]
+    speed_laws: tuple[SensorSpeedLaw, ...]
     comparisons: tuple[Comparison, ...]
     cautions: tuple[str, ...]
 
@@ -34,6 +37,7 @@ class Analysis:
         """Return the blocks of ``campaign.json``; a row of ``media`` has the CSV file's keys."""
         return {
             "media": [jsonable(one) for one in self._media()],
+            "speed_law": [law.as_dict() for law in self.speed_laws],
             "comparisons": [jsonable(one) for one in self.comparisons],
         }
 
@@ -65,8 +69,9 @@ def _mean(mean: Any) -> dict[str, Any]:
 
 
 def analyse(runs: tuple[CampaignRun, ...], settings: CampaignSettings) -> Analysis:
-    """Pool the runs, decide and compare."""
+    """Pool the runs, decide, fit the speed laws and compare."""
     media, cautions = pool_media(runs, settings)
+    laws, on_laws = speed_laws(media, settings)
     comparisons, more = compare(media)
-    found = (*cautions, *(c for one in media for c in one.cautions), *more)
-    return Analysis(media, comparisons, tuple(dict.fromkeys(found)))
+    found = (*cautions, *(c for one in media for c in one.cautions), *on_laws, *more)
+    return Analysis(media, laws, comparisons, tuple(dict.fromkeys(found)))
