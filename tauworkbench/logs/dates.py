@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import re
 import warnings
 from collections import Counter
+from collections.abc import Iterable
 from datetime import UTC, date, datetime, timedelta
 from typing import Any
 
@@ -12,9 +14,9 @@ from numpy.typing import NDArray
 
 from ..errors import InputError
 from .records import FloatArray
-from .stamps import form_of
+from .stamps import FORMS, form_of
 
-__all__ = ["by_continuity", "by_dateutil", "clock_words", "commonest", "date_words"]
+__all__ = ["by_continuity", "by_dateutil", "clock_words", "commonest", "date_words", "day_first_of"]
 
 _EPOCH_DAY = date(1970, 1, 1)
 _DEFAULTS = (datetime(2000, 1, 1), datetime(2001, 2, 2))
@@ -63,6 +65,18 @@ def commonest(texts: Any) -> str:
     if longer and any(form_of(t) is None and ":" in t for t in head):
         return longer
     return best
+
+
+def day_first_of(texts: Iterable[str]) -> bool | None:
+    """Return whether numeric dates have the day first, as far as these stamps tell."""
+    found = set()
+    for text in texts:
+        form = form_of(text)
+        match = re.match(FORMS[form], text) if form is not None else None
+        groups = match.groupdict() if match is not None else {}
+        if "a" in groups and max(int(groups["a"]), int(groups["b"])) > 12:
+            found.add(int(groups["a"]) > 12)
+    return found.pop() if len(found) == 1 else None
 
 
 def by_dateutil(text: str, day_first: bool) -> datetime | None:

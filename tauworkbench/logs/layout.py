@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from ..errors import InputError
+from .dates import day_first_of
 from .dialects import DIALECTS, MISSING
 from .header import header_of, named_columns, split_fields
 from .records import Column, Reading
@@ -40,6 +41,7 @@ class Layout:
     missing: tuple[str, ...]
     notes: tuple[str, ...] = ()
     joined: bool = False
+    day_first: bool | None = None
 
 
 def sniff(lines: Sequence[str], given: Reading, where: str) -> Layout:
@@ -108,7 +110,15 @@ def _laid_out(lines: Sequence[str], given: Reading, where: str) -> Layout:
     columns = named_columns(names[: len(kinds)], units[: len(kinds)], kinds)
     if all(k not in ("number", "stamp") for k in kinds):
         raise InputError(where, "holds no column of numbers", "give a log with numbers in it")
-    return Layout(delimiter, decimal, start, width, columns, missing, notes)
+    stamps = (
+        row[c.number - 1]
+        for c in columns
+        if c.kind == "stamp"
+        for row in table[start:]
+        if len(row) == width
+    )
+    day_first = day_first_of(stamps) if given.day_first is None else given.day_first
+    return Layout(delimiter, decimal, start, width, columns, missing, notes, day_first=day_first)
 
 
 def _dialect(lines: Sequence[str], given: Reading, where: str) -> tuple[str, str]:

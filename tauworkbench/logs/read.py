@@ -172,7 +172,7 @@ def _found(layout: Layout, reading: Reading, encoding: str | None) -> Reading:
         decimal=layout.decimal,
         encoding=encoding,
         header_rows=layout.header_rows,
-        day_first=reading.day_first,
+        day_first=layout.day_first,
         missing=reading.missing,
     )
 

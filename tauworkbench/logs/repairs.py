@@ -65,15 +65,19 @@ def _spikes(values: FloatArray, threshold: float) -> BoolArray:
     floor = max(threshold * _sigma(d), 4.0 * _quantum(d))
     for i in np.flatnonzero((height > floor) & (np.abs(before + after) < 0.25 * height)):
         # Noise near it: its own two differences left out; outliers beside it don't hide it.
-        near = np.abs(np.r_[d[max(0, i - 20) : i], d[i + 2 : i + 22]])
-        if near.size < 4 or height[i] > threshold * 1.4826 * float(np.median(near)):
-            out[i + 1] = True
+        near = np.r_[d[max(0, i - 20) : i], d[i + 2 : i + 22]]
+        out[i + 1] = height[i] > threshold * _sigma(near)
     return out
 
 
 def _sigma(differences: FloatArray) -> float:
-    """Robust standard deviation of the differences (median absolute deviation)."""
-    return 1.4826 * float(np.median(np.abs(differences - np.median(differences))))
+    """Robust scale of the differences (median absolute value), repeats left out.
+
+    A record that is coarse, or polled slowly, repeats more often than not; its noise is no less.
+    """
+    size = np.abs(differences)
+    size = size[size > 0]
+    return 1.4826 * float(np.median(size)) if size.size else 0.0
 
 
 def _quantum(differences: FloatArray) -> float:

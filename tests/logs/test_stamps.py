@@ -184,6 +184,15 @@ def test_day_is_settled_by_the_run_file(tmp_path):
     assert read(path, day_first=True).cautions == ()
 
 
+@pytest.mark.parametrize(
+    ("form", "expected"),
+    [("%d/%m/%Y %H:%M", True), ("%m/%d/%Y %H:%M", False), ("%Y-%m-%d %H:%M", None)],
+)
+def test_order_that_the_first_rows_tell_is_shown(tmp_path, form, expected):
+    log = read_log(log_of(tmp_path, stamps(form, step_s=60.0)))
+    assert log.reading.day_first is expected
+
+
 def test_day_that_changes_no_elapsed_time_is_noted(tmp_path):
     found = read(log_of(tmp_path, stamps("%d/%m/%Y %H:%M:%S", datetime(2026, 4, 3, 12), 1.0)))
     np.testing.assert_allclose(found.time_s, np.arange(N))
