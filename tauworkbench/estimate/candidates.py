@@ -21,6 +21,9 @@ from .starts import Record, fit_blocks, grid_kind, search_blocks, shapes, zoom
 if TYPE_CHECKING:
     from .driven import DrivenModel
 
+# How many of a grid's best places are polished.
+_KEPT = {"one": 2, "series": 2, "free": 5}
+
 __all__ = ["Fitted", "fit_candidates", "forms"]
 
 
@@ -100,7 +103,7 @@ def fit_candidates(
     offset = settings.start_c if settings.start_c is not None else float(record.value.mean())
     starts = {}
     for kind in {grid_kind(f) for f in wanted}:
-        starts[kind] = zoom(record, step, kind, keep=2)
+        starts[kind] = zoom(record, step, kind, keep=_KEPT[kind])
         if not starts[kind]:
             raise EstimateError(
                 "log", "no response could be found in the window", "choose a window with one step"
@@ -112,6 +115,8 @@ def fit_candidates(
         tick(watch, k, len(wanted), f"fitting {form.name}")
         model = StepModel(form, rough, drive, step.bracket_s[0], settings.start_c is not None)
         places = shapes(form, starts[grid_kind(form)])
+        if form.has_impulse:  # free amplitudes have more valleys: try those of plain series too
+            places += shapes(form, zoom(record, step, "series", keep=3))
         near = _nearest(record, model, places, offset, watch)
         fitted.append(_best(record, replace(model, blocks=fine), near, offset, watch))
     return fitted
