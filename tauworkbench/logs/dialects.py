@@ -15,6 +15,7 @@ __all__ = [
     "LETTERS",
     "MISSING",
     "SENTINELS",
+    "TIME_WORDS",
     "TRADE_SIGNS",
 ]
 
@@ -27,7 +28,7 @@ BOMS: tuple[tuple[bytes, str], ...] = (
 
 # Tried for text that isn't UTF-8, if it then shows no letters beyond ASCII but those of logs: the
 # one with most of the trade's signs, the first of equals. charset-normalizer gets the rest.
-ENCODINGS = ("cp1252", "cp437", "mac-roman")
+ENCODINGS = ("cp1252", "cp437", "mac-roman", "cp1253")
 TRADE_SIGNS = frozenset("°ΩµμΔ±²³·×–‰αβτ")
 LETTERS = frozenset("äöüÄÖÜßéèêàâçñåøæÅØÆº˚")
 
@@ -59,6 +60,9 @@ DIALECTS: tuple[tuple[str, str], ...] = (
 )
 
 COMMENT_MARKS = ("#", "%", "//", "!", "'")
+
+# In the name of a column that holds times, without case.
+TIME_WORDS = ("time", "date", "stamp", "elapsed", "clock", "zeit", "datum", "temps", "tiempo")
 
 # Texts that stand for "no value", compared without outer blanks and case.
 MISSING: tuple[str, ...] = (

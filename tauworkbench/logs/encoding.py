@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import codecs
+import re
 
 from ..errors import InputError
 from .dialects import BOMS, ENCODINGS, FOREIGN, LETTERS, TRADE_SIGNS
 
 __all__ = ["encoding_of"]
+
+_FEW_RUNS = 4
 
 
 def encoding_of(head: bytes, given: str | None, where: str) -> str:
@@ -27,7 +30,10 @@ def encoding_of(head: bytes, given: str | None, where: str) -> str:
         if head.startswith(mark):
             return name
     if b"\0" in head:
-        return _wide(head, where)
+        wide = _wide(head)
+        if wide is not None:
+            return wide
+        head = _without_nuls(head, where)
     if _is_utf8(head):
         return "utf-8"
     best, most = "", -1
@@ -52,7 +58,7 @@ def _known(given: str, where: str) -> str:
     return name
 
 
-def _wide(head: bytes, where: str) -> str:
+def _wide(head: bytes) -> str | None:
     """UTF-16 without a mark: every other byte of plain text is zero."""
     pairs = len(head) // 2
     for name, offset in (("utf-16-le", 1), ("utf-16-be", 0)):
@@ -60,7 +66,16 @@ def _wide(head: bytes, where: str) -> str:
             head[1 - offset : 2 * pairs : 2].count(0) == 0
         ):
             return name
-    raise InputError(where, "is binary, not text", "give the log as CSV, Excel or Parquet")
+    return None
+
+
+def _without_nuls(head: bytes, where: str) -> bytes:
+    """Text in which a logger that lost its power left a run of zeros; refuse what is none."""
+    rest = head.replace(b"\0", b"")
+    control = sum(rest.count(bytes([c])) for c in range(1, 32) if c not in b"\t\n\r\f\x1a")
+    if len(re.findall(rb"\0+", head)) > _FEW_RUNS or not rest or control > 0.01 * len(rest):
+        raise InputError(where, "is binary, not text", "give the log as CSV, Excel or Parquet")
+    return rest
 
 
 def _is_utf8(head: bytes) -> bool:

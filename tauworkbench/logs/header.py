@@ -5,9 +5,10 @@ from __future__ import annotations
 import csv
 import re
 from collections.abc import Sequence
+from itertools import pairwise
 
-from ..units import parse_unit
-from .dialects import COMMENT_MARKS
+from ..units import dimension, parse_unit
+from .dialects import COMMENT_MARKS, TIME_WORDS
 from .records import Column
 
 __all__ = ["header_of", "named_columns", "split_fields"]
@@ -59,11 +60,29 @@ def _bracketed(name: str) -> tuple[str, str]:
 def header_of(
     table: Sequence[Sequence[str]], lines: Sequence[str], width: int, delimiter: str
 ) -> tuple[list[str], list[str], tuple[str, ...]]:
-    """Return names and units of a row's fields from the rows before the first sample."""
+    """Return names and units of a row's fields from the rows before the first sample.
+
+    Parameters
+    ----------
+    table : sequence of rows
+        The rows of ``lines``, then the first samples.
+    lines : sequence of str
+        What stands before the first sample.
+    width : int
+        The fields to be named.
+    delimiter : str
+
+    Returns
+    -------
+    names, units : list of str
+        Empty where there is none.
+    notes : tuple of str
+        What was taken for granted.
+    """
     none = [""] * width
     above = [
         fields
-        for row, line in zip(table, lines, strict=True)
+        for row, line in zip(table, lines, strict=False)
         if (fields := _header_fields(row, line, width, delimiter)) is not None
     ]
     if not above:
@@ -76,14 +95,32 @@ def header_of(
     filled = [n for n in names if n]
     if len(above) > 1 and len(set(filled)) < len(filled):
         names = _joined(_fitted(above[-2], width), names)
-    notes: tuple[str, ...] = ()
-    if len(_trimmed(above[-1])) == width - 1 and not names[0]:
-        words = (
-            f"the header names {width - 1} of {width} columns and the first was taken as the one "
-            "without a name; check the columns, or number them"
-        )
-        notes = (words,)
-    return names, units, notes
+    if len(above[-1]) != width - 1:
+        return names, units, ()
+    which = "first"
+    if not _lacks_first(above[-1], table[len(lines) :]):
+        names, units = ([*x[1:], ""] if not x[0] else x for x in (names, units))
+        which = "last"
+    words = (
+        f"the header names {width - 1} of {width} columns and the {which} was taken as the one "
+        "without a name; check the columns, or number them"
+    )
+    return names, units, (words,)
+
+
+def _lacks_first(names: Sequence[str], samples: Sequence[Sequence[str]]) -> bool:
+    """Whether a header that is one short leaves out the first column.
+
+    It does where that is a running number, or where its own first name is none of a time.
+    """
+    first = [row[0] for row in samples[:20] if row and row[0]]
+    if len(first) > 1 and all(f.isascii() and f.isdigit() and len(f) < 10 for f in first):
+        numbers = [int(f) for f in first]
+        if all(b - a == 1 for a, b in pairwise(numbers)):
+            return True
+    unit = _bracketed(names[0])[1]
+    says_time = any(w in names[0].casefold() for w in TIME_WORDS) or names[0].strip() == "t"
+    return not (says_time or (unit and dimension(unit) == "time"))
 
 
 def _header_fields(row: Sequence[str], line: str, width: int, delimiter: str) -> list[str] | None:

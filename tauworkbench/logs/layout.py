@@ -101,10 +101,7 @@ def _laid_out(lines: Sequence[str], given: Reading, where: str) -> Layout:
                 where, f"has fewer than {start + 1} rows", "give a smaller [log] read header_rows"
             )
     width = len(kinds)
-    # Separators at the rows' ends that the header lacks: its names belong to the first columns.
-    named = width - 1 if kinds[-1] == "empty" else width
-    names, units, notes = header_of(table[:start], lines[:start], named, delimiter)
-    names, units = (x + [""] * (width - named) for x in (names, units))
+    names, units, notes = _named(table, lines, start, kinds, delimiter)
     while len(kinds) > 2 and kinds[-1] == "empty" and not names[len(kinds) - 1]:
         kinds = kinds[:-1]
     columns = named_columns(names[: len(kinds)], units[: len(kinds)], kinds)
@@ -121,10 +118,35 @@ def _laid_out(lines: Sequence[str], given: Reading, where: str) -> Layout:
     return Layout(delimiter, decimal, start, width, columns, missing, notes, day_first=day_first)
 
 
+def _named(
+    table: Sequence[Sequence[str]],
+    lines: Sequence[str],
+    start: int,
+    kinds: Sequence[str],
+    delimiter: str,
+) -> tuple[list[str], list[str], tuple[str, ...]]:
+    """Return names, units and notes for all fields of a row.
+
+    Empty fields at the rows' ends may be columns that the header names, or only separators that it
+    lacks: then its names belong to the fields before them.
+    """
+    width = len(kinds)
+    least = max((i + 1 for i, k in enumerate(kinds) if k != "empty"), default=width)
+    for named in range(width, least - 1, -1):
+        found = header_of(table, lines[:start], named, delimiter)
+        names, units, notes = found
+        if named == least or (names[0] and names[-1]):
+            rest = [""] * (width - named)
+            return [*names, *rest], [*units, *rest], notes
+    raise AssertionError("the last width is always taken")
+
+
 def _dialect(lines: Sequence[str], given: Reading, where: str) -> tuple[str, str]:
     """Return the delimiter and decimal sign that explain most fields of most lines."""
     candidates = _candidates(given)
-    filled = [line for line in lines if line.strip()][-400:]
+    # The later half: samples, whatever stands before them.
+    filled = [line for line in lines if line.strip()]
+    filled = filled[len(filled) // 2 :][-400:]
     best, best_score = None, 0.0
     for delimiter, decimal in candidates:
         score = _score(filled, delimiter, decimal)
@@ -183,8 +205,8 @@ def _kind(field: str, decimal: str, missing: Sequence[str]) -> str:
 def _kinds(table: Sequence[Sequence[str]], decimal: str, missing: Sequence[str]) -> tuple[str, ...]:
     """Return each column's kind by the majority of the later rows."""
     rows = [r for r in table if any(_is_value(f, decimal) for f in r)]
-    widths = Counter(len(r) for r in rows[len(rows) // 2 :] if len(r) > 1)
-    width = widths.most_common(1)[0][0]
+    wide = [r for r in rows if len(r) > 1]
+    width = Counter(len(r) for r in wide[len(wide) // 2 :]).most_common(1)[0][0]
     same = [r for r in rows if len(r) == width]
     return tuple(
         kind_of_texts(column, decimal, missing)

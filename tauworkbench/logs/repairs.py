@@ -29,6 +29,7 @@ _HOUR_S, _DAY_S = 3600.0, 86400.0
 _MOST_TIMES = 1000
 # Long records are looked at in parts, each with this many samples of its neighbours.
 _AT_ONCE, _AROUND = 1 << 20, 24
+_COARSE = 3.0  # steps of its resolution by which a polled channel changes at least
 
 
 def spikes(values: FloatArray, *, threshold: float = 12.0) -> BoolArray:
@@ -227,7 +228,7 @@ def find_gaps(time_s: FloatArray) -> list[Repair]:
     some = d[:: d.size // _AT_ONCE + 1]
     usual = float(np.median(some))
     # An interval that one in a hundred is as long as is no gap, however uneven the rest is.
-    limit = max(5.0 * usual, 2.0 * float(np.quantile(some, 0.99)))
+    limit = max(5.0 * usual, 2.0 * float(np.quantile(some, 0.99, method="lower")))
     at = np.flatnonzero(d > limit)
     if not at.size:
         return []
@@ -287,6 +288,9 @@ def polled(time_s: FloatArray, values: FloatArray) -> tuple[FloatArray, float] |
     low, high = np.quantile(runs, (0.1, 0.6))
     if usual < 2 or low < 0.5 * usual or high > 1.6 * usual:
         return None
+    d = np.diff(values)
+    if float(np.median(np.abs(d[d != 0]))) < _COARSE * _quantum(d):
+        return None  # a coarse reading of a steady ramp changes as regularly, one step at a time
     period = float(np.median(np.diff(time_s[change])))
     knots = np.unique(np.r_[0, change, values.size - 1])
     before = time_s[change] - 1.001 * period

@@ -80,7 +80,7 @@ def _first_sheet(book: Any, where: str, watch: Watch) -> tuple[bytes, tuple[str,
         sheet.reset_dimensions()
         out.seek(0)
         out.truncate()
-        wide = cells = 0
+        wide = cells = widest = 0
         for i, row in enumerate(sheet.iter_rows(values_only=True)):
             cells += len(row)
             if cells > _MOST_CELLS:
@@ -90,6 +90,8 @@ def _first_sheet(book: Any, where: str, watch: Watch) -> tuple[bytes, tuple[str,
                 step(watch, i, max(i, 1) + 5000, "reading the workbook")
             texts = [_cell(value) for value in row]
             wide += sum(t != "" for t in texts) >= 2
+            widest = max(widest, len(texts))  # empty cells at a row's end aren't in the file
+            texts += [""] * (widest - len(texts) if any(texts) else 0)
             out.write(("\t".join(texts) + "\n").encode("utf-8", "replace"))
         if wide >= 2:
             rest = [n for n in names if n != sheet.title]

@@ -21,6 +21,9 @@ __all__ = ["Use", "Work", "check_enough", "fill", "look_through", "merge", "on_l
 
 FEWEST = 8
 _MOST_TIMES = 1000
+# Part of the rows. A file with more is several runs, not one run with late rows; sorted, they would
+# be mixed and averaged. A file that runs backwards throughout, newest row first, is one run.
+_MOST_DISORDER = 0.25
 
 
 @dataclass(frozen=True)
@@ -94,6 +97,14 @@ def order(work: Work) -> None:
         return
     late = work.time_s < np.maximum.accumulate(work.time_s)
     count = int(late.sum())
+    if (d > 0).any() and count > _MOST_DISORDER * late.size:
+        at = int(np.argmax(d < 0))
+        raise InputError(
+            "[log] time",
+            f"{count} of {late.size} rows are out of order: {work.time_s[at + 1]:.6g} s follows "
+            f"{work.time_s[at]:.6g} s at row {work.rows[at + 1]}",
+            "cut the file into its runs, or choose one sensor's rows with [log] object",
+        )
     work.say("out of order", count, f"{count} rows came after later ones and were sorted by time",
              work.time_s[late])  # fmt: skip
     by_time = np.argsort(work.time_s, kind="stable")

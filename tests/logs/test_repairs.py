@@ -192,7 +192,8 @@ def test_quantised_step_of_the_reference_keeps_its_edge():
 
 def test_polled_step_is_drawn_over_one_period_only():
     time = np.arange(N) * 0.1
-    truth = np.where(time < 20, 20 + 0.001 * time, 60 + 0.001 * time)
+    noise = 0.003 * np.random.default_rng(4).normal(size=N)
+    truth = np.where(time < 20, 20.0, 60.0) + np.round(0.001 * time + noise, 4)
     found = repairs.polled(time, truth[(np.arange(N) // 5) * 5])
     assert found is not None
     values, period = found
