@@ -134,6 +134,8 @@ def _run_server(room: Path, source: Path, port: int, token: str) -> None:
     # The token in the environment, not among the arguments, which every user of the machine sees.
     os.environ["JUPYTER_TOKEN"] = token
     lab: Any = import_module("jupyterlab.labapp")
+    if find_spec("voila"):
+        import_module("voila")  # it sets warning filters of its own
     if not sys.warnoptions:  # what Jupyter's parts say of each other is of no use to the user
         warnings.simplefilter("ignore")
     settings = {"websocket_max_message_size": _MESSAGE_BYTES, "mathjax_url": "/static/none.js"}

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 from html import escape
 
 from ..estimate.record import Estimate
@@ -16,7 +17,7 @@ from ..session.stages import Resolved
 from .picture import step_of
 from .screen import ResultShown
 
-__all__ = ["Answer", "answer_of", "result_shown", "table_html"]
+__all__ = ["Answer", "answer_of", "report_of", "result_shown", "table_html"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -52,6 +53,19 @@ def result_shown(result: Result, estimate: Estimate) -> ResultShown:
         tables.append(table_html(budget_table(estimate.budget, estimate.response_time_s.get(on))))
     cautions = tuple(dict.fromkeys((*result.trace.cautions, *estimate.cautions)))
     return ResultShown(_headline(estimate), "".join(tables), cautions)
+
+
+def report_of(found: Resolved) -> str:
+    """Return the report as it would be saved; an empty text where there is no result."""
+    result = found.get("result")
+    return "" if result is None else _rendered(result)
+
+
+@lru_cache(maxsize=1)
+def _rendered(result: Result) -> str:
+    from ..report.document import render
+
+    return render(result)
 
 
 def table_html(table: Table) -> str:

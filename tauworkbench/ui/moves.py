@@ -20,7 +20,7 @@ from .words import error_words
 if TYPE_CHECKING:
     from .show import State
 
-__all__ = ["chosen_anew", "looked", "named", "refused", "remembered", "with_log"]
+__all__ = ["chosen_anew", "looked", "refused", "remembered", "with_log"]
 
 _STEP_MARGIN = 0.08  # of the window, on either side
 _WIDTHS, _RATIOS = (300, 4000), (0.5, 4.0)
@@ -98,12 +98,6 @@ def looked(state: State, head: str, part: str, value: Any, found: Resolved) -> S
             ratio=float(min(max(ratio, _RATIOS[0]), _RATIOS[1])),
         )
     return state.but(view_s=_view(value, state, found))
-
-
-def named(state: State, which: str, text: str) -> State:
-    """Take where to save to."""
-    problems = {k: v for k, v in state.save_problems.items() if k != f"save.{which}"}
-    return state.but(**{which: text}, save_problems=MappingProxyType(problems))
 
 
 def _set(state: State, found: Resolved, name: str, text: str, typed: dict[str, Typed]) -> Choices:

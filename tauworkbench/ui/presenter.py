@@ -21,7 +21,7 @@ from . import moves
 from .answer import answer_of
 from .autosave import Autosave, Kept, state_folder
 from .past import Past
-from .saving import free_run_file, result_folder, save_result, save_run_file
+from .saving import Saver, free_run_file
 from .screen import ProgressShown, Screen
 from .setting import set_difference
 from .show import State, done_parts, screen_of
@@ -66,15 +66,11 @@ class Presenter:
         self._found: Resolved = resolve(self._state.choices, self._memory)
         self._screen = Screen()
         self._past = Past()
-        self._opened: Path | None = None  # the run file that may be replaced without asking
-        self._refused = ""  # the name that was refused because such a file is there
-        self._folder_typed = False
+        self._saver = Saver(state_folder())
         self._kept: Kept | None = None
         self._looked_for = ""  # the log whose kept work was looked for
         self._beginning = False  # whether the log just opened has yet to be read
         view.on_change = self.on_change
-
-    # ------------------------------------------------------------------ what others may look at
 
     @property
     def state(self) -> State:
@@ -86,13 +82,6 @@ class Presenter:
         """What the choices come to, as far as that is known."""
         return self._found
 
-    @property
-    def screen(self) -> Screen:
-        """What the page shows."""
-        return self._screen
-
-    # ------------------------------------------------------------------ from outside
-
     def open(self, source: Path | None) -> None:
         """Open a run file or a log; nothing opens an empty page.
 
@@ -103,16 +92,18 @@ class Presenter:
             self._resolve()
             return
         try:
+            opened: Path | None = None
             if source.suffix.lower() == ".toml":
                 choices = replace(read_choices(source, complete=False), source="")
-                self._opened, run_file = source, str(source.absolute())
+                opened, run_file = source, source.absolute()
             else:
                 choices = moves.with_log(Choices(), source)
-                self._opened, run_file = None, str(free_run_file(source.absolute()))
+                run_file = free_run_file(source.absolute())
         except InputError as e:
             self.refuse(e)
             return
-        self._begin(choices, run_file)
+        self._saver.begin(opened)
+        self._begin(choices, str(run_file))
 
     def refuse(self, error: InputError) -> None:
         """Show an error that no field is to blame for."""
@@ -135,8 +126,6 @@ class Presenter:
         """Stop whatever runs."""
         self._work.close()
 
-    # ------------------------------------------------------------------ the one route from the page
-
     def on_change(self, name: str, value: Any) -> None:
         """Take what the user did; `views.BenchView` lists the names."""
         head, _, rest = name.partition(".")
@@ -148,8 +137,7 @@ class Presenter:
         if head == "do":
             self._ACTIONS[rest](self)
         elif head == "save":
-            self._state = moves.named(self._state, rest, str(value))
-            self._folder_typed = self._folder_typed or rest == "folder"
+            self._state = self._saver.typed(self._state, rest, str(value))
             self._refresh()
         elif head == "upload" or name == "log.file":
             self._open_typed(str(value))
@@ -168,20 +156,18 @@ class Presenter:
             self.open(path)
             return
         try:
-            known = self._opened is not None
+            known = self._saver.opened is not None
             choices = moves.with_log(self._state.choices, path, keep_folder=known)
         except InputError as e:
             self._change(typed=MappingProxyType(moves.refused(self._state, "log.file", typed, e)))
             self._refresh()
             return
         if not known:
-            self._name_run_file(str(free_run_file(path.absolute())))
+            self._state = self._saver.named(self._state, str(free_run_file(path.absolute())))
         typed_still = {k: v for k, v in self._state.typed.items() if k != "log.file"}
         self._change(view_s=None, typed=MappingProxyType(typed_still))
         self._beginning = self._beginning or self._found.get("log") is None
         self._choose(choices)
-
-    # ------------------------------------------------------------------ actions
 
     def _fit(self) -> None:
         self._work.now()
@@ -203,15 +189,13 @@ class Presenter:
         self._keep()
 
     def _take_up(self) -> None:
-        kept, self._kept = self._kept, None
-        self._change(offer="")
-        if kept is None:
-            self._refresh()
-            return
-        run_file = Path(kept.run_file)
-        self._opened = run_file if run_file.is_file() else None
-        self._name_run_file(kept.run_file)
-        self._choose(kept.choices)
+        kept = self._kept
+        self._leave()
+        if kept is not None:
+            run_file = Path(kept.run_file)
+            self._saver.opened = run_file if run_file.is_file() else None
+            self._state = self._saver.named(self._state, kept.run_file)
+            self._choose(kept.choices)
 
     def _leave(self) -> None:
         self._kept = None
@@ -219,31 +203,17 @@ class Presenter:
         self._refresh()
 
     def _save_run_file(self) -> None:
-        typed, again = self._state.run_file, self._refused
-        self._refused = ""
-        try:
-            choices, path = save_run_file(
-                self._state.choices, typed, self._opened, state_folder(), again == typed
-            )
-        except InputError as e:
-            self._refused = typed
-            self._change(save_problems=MappingProxyType({"save.run_file": error_words(e)}))
-            self._refresh()
-            return
-        self._opened = path
-        self._name_run_file(str(path.absolute()))
-        self._change(choices=choices, saved=f"Saved the run file {path}")
+        self._state = self._saver.run_file(self._state)
         self._resolve()
 
     def _save_result(self) -> None:
         result = self._found.get("result")
         if result is not None:
-            try:
-                folder = save_result(result, self._state.folder, self._state.choices.folder)
-            except InputError as e:
-                self._change(save_problems=MappingProxyType({"save.folder": error_words(e)}))
-            else:
-                self._change(saved=f"Saved report, result and trace in {folder}")
+            self._state = self._saver.result(self._state, result)
+        self._refresh()
+
+    def _show_report(self) -> None:
+        self._change(report=not self._state.report)
         self._refresh()
 
     _ACTIONS: Mapping[str, Callable[[Presenter], None]] = MappingProxyType(
@@ -256,10 +226,9 @@ class Presenter:
             "leave": _leave,
             "save_run_file": _save_run_file,
             "save_result": _save_result,
+            "show_report": _show_report,
         }
     )
-
-    # ------------------------------------------------------------------ from choices to the page
 
     def _change(self, **changes: Any) -> None:
         self._state = self._state.but(**changes)
@@ -271,14 +240,9 @@ class Presenter:
         self._state = State(
             dark=self._state.dark, width=self._state.width, ratio=self._state.ratio, choices=choices
         )
-        self._folder_typed = False
-        self._name_run_file(run_file)
+        self._state = self._saver.named(self._state, run_file)
         self._beginning = True
         self._resolve()
-
-    def _name_run_file(self, run_file: str) -> None:
-        folder = self._state.folder if self._folder_typed else result_folder(run_file)
-        self._change(run_file=run_file, folder=folder, save_problems=_NOTHING)
 
     def _choose(self, choices: Choices) -> None:
         if choices == self._state.choices:

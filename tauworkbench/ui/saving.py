@@ -3,19 +3,21 @@
 from __future__ import annotations
 
 import shutil
-from dataclasses import replace
 from pathlib import Path
+from types import MappingProxyType
 from typing import TYPE_CHECKING
 
 from ..errors import InputError
 from ..session.choices import Choices
 from ..session.run_file import save_choices
 from ..session.store import default_folder
+from .words import error_words
 
 if TYPE_CHECKING:
     from ..session.saved import RunResult
+    from .show import State
 
-__all__ = ["free_run_file", "result_folder", "save_result", "save_run_file"]
+__all__ = ["Saver", "free_run_file"]
 
 
 def free_run_file(log: Path) -> Path:
@@ -27,62 +29,81 @@ def free_run_file(log: Path) -> Path:
     return target
 
 
-def result_folder(run_file: str) -> str:
-    """Return the folder beside a run file that the command line would write to."""
-    return str(default_folder(run_file)) if run_file else ""
+class Saver:
+    """Where a page saves to, and the saving.
 
-
-def save_run_file(
-    choices: Choices, typed: str, opened: Path | None, own: Path, replace_it: bool
-) -> tuple[Choices, Path]:
-    """Write a run file; return the choices as they stand in it, and its path.
-
-    Parameters
+    Attributes
     ----------
-    choices : Choices
-        What to write.
-    typed : str
-        The path, relative to the choices' folder.
     opened : Path or None
-        The run file that the page was opened on, or saved to before; another file of that name is
-        not replaced unless ``replace_it``.
-    own : Path
-        The bench's own folder: a log kept there (an upload) is copied beside the run file.
-    replace_it : bool
-        Whether the user has been asked.
-
-    Raises
-    ------
-    InputError
-        Where it can't be written, or would replace a file that wasn't opened.
+        The run file that the page was opened on, or saved to: it may be replaced without asking.
     """
-    if not typed.strip():
-        raise InputError("run file", "no name is given", "type one, such as plunge.toml")
-    path = choices.folder / Path(typed.strip()).expanduser()
-    if path.suffix != ".toml":
-        path = path.with_name(path.name + ".toml")
-    known = opened is not None and path.absolute() == opened.absolute()
-    if path.exists() and not known and not replace_it:
-        raise InputError(
-            str(path), "is there already and isn't the file that was opened",
-            "type another name, or press Save run file again to replace it",
-        )  # fmt: skip
-    choices = _with_log_beside(choices, path.parent, own)
-    save_choices(choices, path)
-    return replace(choices.moved(path.parent), source=""), path
+
+    def __init__(self, own: Path) -> None:
+        self.opened: Path | None = None
+        self._own = own  # the bench's own folder: a log kept there is copied beside the run file
+        self._refused = ""  # the name that was refused because such a file is there
+        self._folder_typed = False
+
+    def begin(self, opened: Path | None) -> None:
+        """Begin with another run file, or with none."""
+        self.opened, self._refused, self._folder_typed = opened, "", False
+
+    def named(self, state: State, run_file: str) -> State:
+        """Name the run file, and the folder after it unless that was typed."""
+        folder = state.folder
+        if not self._folder_typed:
+            folder = str(default_folder(run_file)) if run_file else ""
+        return state.but(run_file=run_file, folder=folder, save_problems=MappingProxyType({}))
+
+    def typed(self, state: State, which: str, text: str) -> State:
+        """Take a name that was typed: ``which`` is ``run_file`` or ``folder``."""
+        self._folder_typed = self._folder_typed or which == "folder"
+        problems = {k: v for k, v in state.save_problems.items() if k != f"save.{which}"}
+        return state.but(**{which: text}, save_problems=MappingProxyType(problems))
+
+    def run_file(self, state: State) -> State:
+        """Write the run file; one that stands there unopened only when asked a second time."""
+        again, self._refused = self._refused == state.run_file, ""
+        try:
+            path = self._path(state, again)
+            choices = _with_log_beside(state.choices, path.parent, self._own)
+            save_choices(choices, path)
+        except InputError as e:
+            self._refused = state.run_file
+            return _refused(state, "save.run_file", e)
+        self.opened = path
+        state = self.named(state, str(path.absolute()))
+        return state.but(choices=choices.moved(path.parent), saved=f"Saved the run file {path}")
+
+    def result(self, state: State, result: RunResult) -> State:
+        """Write a result's files."""
+        try:
+            if not state.folder.strip():
+                raise InputError("folder", "no name is given", "type one")
+            typed = Path(state.folder.strip()).expanduser()
+            folder = result.save(state.choices.folder / typed)
+        except InputError as e:
+            return _refused(state, "save.folder", e)
+        return state.but(saved=f"Saved report, result and trace in {folder}")
+
+    def _path(self, state: State, again: bool) -> Path:
+        typed = state.run_file.strip()
+        if not typed:
+            raise InputError("run file", "no name is given", "type one, such as plunge.toml")
+        path = state.choices.folder / Path(typed).expanduser()
+        if path.suffix != ".toml":
+            path = path.with_name(path.name + ".toml")
+        known = self.opened is not None and path.absolute() == self.opened.absolute()
+        if path.exists() and not known and not again:
+            raise InputError(
+                str(path), "is there already and isn't the file that was opened",
+                "type another name, or press Save run file again to replace it",
+            )  # fmt: skip
+        return path
 
 
-def save_result(result: RunResult, typed: str, base: Path) -> Path:
-    """Write a result's files into a folder and return it.
-
-    Raises
-    ------
-    InputError
-        Where it can't be written.
-    """
-    if not typed.strip():
-        raise InputError("folder", "no name is given", "type one")
-    return result.save(base / Path(typed.strip()).expanduser())
+def _refused(state: State, field: str, error: InputError) -> State:
+    return state.but(save_problems=MappingProxyType({field: error_words(error)}))
 
 
 def _with_log_beside(choices: Choices, folder: Path, own: Path) -> Choices:

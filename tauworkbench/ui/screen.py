@@ -25,7 +25,7 @@ __all__ = [
 ]
 
 # What the costly stages are called while they run.
-UNDER_WAY = {"log": "reading the log", "estimates": "fitting"}
+UNDER_WAY = {"log": "reading the log", "channels": "reading the columns", "estimates": "fitting"}
 Control = Literal["text", "choice", "suggestions"]
 
 
@@ -183,7 +183,7 @@ class History:
 
 @dataclass(frozen=True)
 class Screen:
-    """Everything that the page shows."""
+    """Everything that the page shows; ``report`` is a whole HTML document, or empty."""
 
     parts: tuple[PartShown, ...] = ()
     plot: PlotShown | None = None
@@ -193,6 +193,7 @@ class Screen:
     progress: ProgressShown | None = None
     result: ResultShown = ResultShown()
     code: Code = Code()
+    report: str = ""
     history: History = History()
     offer: str = ""
     can_fit: bool = False

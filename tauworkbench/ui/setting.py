@@ -14,6 +14,7 @@ _SET = (
     "markers",
     "result",
     "code",
+    "report",
     "history",
     "offer",
     "can_fit",

@@ -14,7 +14,7 @@ from ..session.checks import check
 from ..session.choices import Choices
 from ..session.stages import Resolved
 from . import words
-from .answer import Answer
+from .answer import Answer, report_of
 from .code import code_of
 from .fields import Typed, field_shown, missing_words
 from .parts import PARTS, Part
@@ -56,6 +56,8 @@ class State:
         The page's theme, the plot's width in pixels, the screen's pixel ratio.
     run_file, folder : str
         Where to save to.
+    report : bool
+        Whether the report is to be seen on the page.
     """
 
     choices: Choices = field(default_factory=Choices)
@@ -73,6 +75,7 @@ class State:
     save_problems: Mapping[str, str] = field(default_factory=lambda: _EMPTY)
     saved: str = ""
     notice: str = ""
+    report: bool = False
     offer: str = ""
     undo: bool = False
     redo: bool = False
@@ -113,6 +116,7 @@ def screen_of(state: State, found: Resolved) -> Screen:
         progress=state.progress,
         result=ResultShown() if answer is None else replace(answer.shown, stale=not fresh),
         code=code_of(state),
+        report=report_of(found) if state.report else "",
         history=History(state.undo, state.redo),
         offer=state.offer,
         can_fit=bool(found.pending) and found.pending[0].stage == "estimates",

@@ -66,6 +66,9 @@ class BenchView(Protocol):
     def set_code(self, code: Code) -> None:
         """Show the run file and the Python lines."""
 
+    def set_report(self, report: str) -> None:
+        """Show the report, a whole HTML document; an empty text shows none."""
+
     def set_history(self, history: History) -> None:
         """Enable undo and redo."""
 

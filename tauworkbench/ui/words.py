@@ -186,10 +186,11 @@ def _column_words(choices: Choices, found: Resolved) -> str:
     channels = found.get("channels")
     units = channels.written or channels.units
     span = float(channels.time_s[-1] - channels.time_s[0])
-    return (
-        f"{choices.log.time} over {figures(span)} s, {choices.log.signal} in "
-        f"{units.get('signal', 'no unit')}"
+    time, signal = (
+        f"column {key}" if (key or "").isdigit() else key
+        for key in (choices.log.time, choices.log.signal)
     )
+    return f"{time} over {figures(span)} s, {signal} in {units.get('signal', 'no unit')}"
 
 
 def _circuit_words(choices: Choices, found: Resolved) -> str:

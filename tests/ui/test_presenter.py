@@ -323,6 +323,20 @@ def test_result_is_saved_where_the_page_says(bench, run_file, tmp_path):
     assert saved["fit"]["response_time_s"]["63.2"]["value"] == answer(one)
 
 
+def test_report_is_shown_as_it_would_be_saved(bench, run_file, tmp_path):
+    one = bench(run_file)
+    assert one.view.shown["report"] == ""
+    one.do("do.show_report")
+    shown = one.view.shown["report"]
+    one.do("save.folder", str(tmp_path / "out"))
+    one.do("do.save_result")
+    assert (tmp_path / "out" / "report.html").read_text() == shown
+    one.do("test.sensor", "P7")
+    assert "P7" in one.view.shown["report"]
+    one.do("do.show_report")
+    assert one.view.shown["report"] == ""
+
+
 def test_folder_that_cannot_be_written_is_said_at_its_field(bench, run_file, tmp_path):
     (tmp_path / "file").write_text("")
     one = bench(run_file)

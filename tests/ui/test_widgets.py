@@ -114,6 +114,7 @@ def test_text_of_users_is_escaped(page):
     page.set_status(Status(bad))
     page.set_result(ResultShown(bad, "", (bad,)))
     page.set_offer(bad)
+    page.set_report(bad)
     written = "".join(x.value for x in everything(page.widget) if isinstance(x, w.HTML))
     assert "<img" not in written
     assert "&lt;img" in written
@@ -122,7 +123,7 @@ def test_text_of_users_is_escaped(page):
 @pytest.mark.parametrize(
     ("name", "action"),
     [("_fit", "fit"), ("_stop", "stop"), ("_undo", "undo"), ("_redo", "redo"),
-     ("_save_result", "save_result")],
+     ("_save_result", "save_result"), ("_show_report", "show_report")],
 )  # fmt: skip
 def test_buttons_say_what_to_do(page, heard, name, action):
     getattr(page, name).click()

@@ -31,7 +31,7 @@ from .section import Section
 __all__ = ["Page"]
 
 _CSS = Path(__file__).parent / "static" / "bench.css"
-_ACCEPT = ".csv,.txt,.tsv,.dat,.log,.xlsx"
+_ACCEPT = ".csv,.txt,.tsv,.dat,.log,.xlsx,.parquet"
 
 
 class Page:
@@ -59,7 +59,7 @@ class Page:
             "log": [self._upload()],
             "step": [],
             "fit": [],
-            "save": [self._save_row, self._code_row],
+            "save": [self._save_row, self._report_box, self._code_row],
         }
         always = {"step": [self.plot.widget], "fit": [self._fit_row, self._answer]}
         self.sections = {
@@ -139,6 +139,15 @@ class Page:
         for widget, text in ((self._run_file, code.run_file), (self._python, code.python)):
             setattr(widget, "value" if self._plain else "text", text)
 
+    def set_report(self, report: str) -> None:
+        """Show the report in a frame of its own, in which no script runs."""
+        frame = (
+            f'<iframe class="tau-frame" title="Report" sandbox srcdoc="{escape(report)}"></iframe>'
+        )
+        self._report_box.value = frame if report else ""
+        self._report_box.layout.display = "" if report else "none"
+        self._show_report.description = "Hide report" if report else "Show report"
+
     def set_history(self, history: History) -> None:
         """Enable undo and redo."""
         self._undo.disabled, self._redo.disabled = not history.undo, not history.redo
@@ -153,8 +162,8 @@ class Page:
         self._fit.disabled = not can_fit
 
     def set_can_save(self, can_save: bool) -> None:
-        """Enable saving a result."""
-        self._save_result.disabled = not can_save
+        """Enable saving a result, and looking at its report."""
+        self._save_result.disabled = self._show_report.disabled = not can_save
 
     # ------------------------------------------------------------------ how it is put together
 
@@ -199,7 +208,12 @@ class Page:
             "Save report and result", self._do("save_result"), self.guard, "tau-save-result",
             tip="Write report.html, result.json and trace.csv",
         )  # fmt: skip
-        self._save_row = w.HBox([run_file, self._save_result])
+        self._show_report = button(
+            "Show report", self._do("show_report"), self.guard, "tau-show-report",
+            tip="Show the report here, as it would be saved",
+        )  # fmt: skip
+        self._report_box = html("", "tau-report")
+        self._save_row = w.HBox([run_file, self._save_result, self._show_report])
         self._save_row.add_class("tau-row")
         titles = ("Run file that reproduces this", "The same from Python")
         if self._plain:

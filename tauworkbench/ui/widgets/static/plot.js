@@ -45,7 +45,7 @@ function render({ model, el }) {
   const pixelOf = (event) => event.clientX - stage.getBoundingClientRect().left;
   const digits = () => {
     const [a, b] = limits();
-    return Math.min(6, Math.max(0, Math.ceil(-Math.log10((b - a) / Math.max(wide(), 1)))));
+    return Math.min(6, Math.max(0, Math.ceil(1 - Math.log10((b - a) / Math.max(wide(), 1)))));
   };
 
   // ---------------------------------------------------------------- the view: zoom and pan
