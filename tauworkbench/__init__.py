@@ -34,6 +34,7 @@ if TYPE_CHECKING:
     from .records import Trace as Trace
     from .sensor import to_temperature as to_temperature
     from .session.campaign import campaign as campaign
+    from .session.recover import recover as recover
     from .session.run import fit as fit
     from .session.run import read_run as read_run
     from .session.run import to_trace as to_trace
@@ -64,6 +65,7 @@ _ROOM_OF = {
     "fit": "session.run",
     "fit_step": "estimate.fit",
     "read_run": "session.run",
+    "recover": "session.recover",
     "recover_ambient": "ambient.recover",
     "to_temperature": "sensor",
     "to_trace": "session.run",

@@ -22,6 +22,7 @@ __all__ = [
     "BudgetLine",
     "Candidate",
     "Combined",
+    "Covariance",
     "Direct",
     "Effect",
     "FitSummary",
@@ -247,8 +248,19 @@ class StepSummary:
 
 
 @dataclass(frozen=True)
+class Covariance:
+    """How several parameters vary together, from noise alone: row and column as ``names``."""
+
+    names: tuple[str, ...]
+    matrix: tuple[tuple[float, ...], ...]
+
+
+@dataclass(frozen=True)
 class FitSummary:
-    """The thermal model's answer; the keys are those of ``result.json``."""
+    """The thermal model's answer; the keys are those of ``result.json``.
+
+    ``covariance`` is that of the dynamic parameters [s^2]; None where the data set it no limit.
+    """
 
     model: str
     time_constants_s: tuple[Quantity, ...]
@@ -258,6 +270,7 @@ class FitSummary:
     noise: NoiseSummary
     candidates: tuple[Candidate, ...]
     converged: bool
+    covariance: Covariance | None = None
 
 
 @dataclass(frozen=True)

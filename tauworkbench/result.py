@@ -6,18 +6,20 @@ A result carries its own settings, so a report needs nothing else.
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field, fields, is_dataclass
+from dataclasses import dataclass, field, fields, is_dataclass, replace
 from typing import Any
 
 import numpy as np
 
+from .ambient.firmware import Correction
+from .ambient.record import Ambient
 from .errors import __version__
 from .estimate.compare import heating_minus_cooling
 from .estimate.record import Estimate
-from .records import Budget, Direct, FitSummary, StepSummary, Trace
+from .records import Budget, Covariance, Direct, FitSummary, StepSummary, Trace
 from .uncertainty import Quantity
 
-__all__ = ["Provenance", "Result", "RunInfo", "jsonable", "result_dict"]
+__all__ = ["Provenance", "Recovery", "Result", "RunInfo", "jsonable", "result_dict"]
 
 FORMAT, FORMAT_MANY, VERSION = "tauworkbench.result", "tauworkbench.results", 1
 QUANTITY = {
@@ -73,7 +75,7 @@ class Result:
     @property
     def fit(self) -> FitSummary:
         """The thermal model's answer."""
-        return self.estimates[0].fit
+        return _fit_summary(self.estimates[0])
 
     @property
     def direct(self) -> Direct | None:
@@ -103,6 +105,45 @@ class Result:
         return many
 
 
+@dataclass(frozen=True, eq=False)
+class Recovery:
+    """A field log's ambient with the trace that it is behind and the provenance.
+
+    ``correction``, for a sensor's own firmware, is there when it was asked for; ``listings`` are
+    programs of a few lines that do it, by file name.
+    """
+
+    run: RunInfo
+    trace: Trace
+    ambient: Ambient
+    provenance: Provenance
+    correction: Correction | None = None
+    listings: Mapping[str, str] = field(default_factory=dict)
+
+    @property
+    def cautions(self) -> tuple[str, ...]:
+        """The trace's, the ambient's and the correction's cautions, each once."""
+        own = () if self.correction is None else self.correction.cautions
+        return tuple(dict.fromkeys((*self.trace.cautions, *self.ambient.cautions, *own)))
+
+    def as_dict(self) -> dict[str, Any]:
+        """Return the content of ``ambient.json``."""
+        blocks = {**self.ambient.as_dict(), "run": self.run}
+        if self.correction is not None:
+            blocks["correction"] = self.correction.as_dict()
+        blocks |= {"cautions": self.cautions, "provenance": self.provenance}
+        return {k: jsonable(v) for k, v in blocks.items()}
+
+
+def _fit_summary(estimate: Estimate) -> FitSummary:
+    """Return the summary with the covariance, where every number in it is known."""
+    names, matrix = estimate.covariance_names, np.asarray(estimate.covariance, float)
+    if not names or not np.isfinite(matrix).all():
+        return estimate.fit
+    rows = tuple(tuple(row) for row in matrix.tolist())
+    return replace(estimate.fit, covariance=Covariance(tuple(names), rows))
+
+
 def result_dict(result: Result, estimate: Estimate) -> dict[str, Any]:
     """One estimate in the form of ``result.json``."""
     cautions = tuple(dict.fromkeys((*result.trace.cautions, *estimate.cautions)))
@@ -111,7 +152,7 @@ def result_dict(result: Result, estimate: Estimate) -> dict[str, Any]:
         "version": VERSION,
         "run": result.run,
         "step": estimate.step,
-        "fit": estimate.fit,
+        "fit": _fit_summary(estimate),
         "direct": estimate.direct,
         "budget": estimate.budget,
         "cautions": list(cautions),

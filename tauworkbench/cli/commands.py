@@ -33,6 +33,7 @@ COMMANDS: tuple[Command, ...] = (
         "check", "check", "read everything a run file names, fit nothing, say what was understood"
     ),
     Command("fit", "fit", "fit a logged step: response times, time constants, report"),
+    Command("recover", "recover", "recover the ambient behind a field log, with a band, report"),
     Command("campaign", "campaign", "fit many runs: a table per run and per medium, report"),
     Command("help", "explain", "say what a key of the run file means and takes"),
 )

@@ -9,7 +9,7 @@ import tomlkit
 
 from ..errors import __version__
 from ..estimate.record import Estimate
-from ..result import Result, jsonable
+from ..result import Recovery, Result, jsonable
 from ..uncertainty import Quantity
 from . import figures, tables, wording, words
 from .page import Bullets, Code, Fact, Facts, Notice, Page, Picture, Section, Text, to_html
@@ -17,7 +17,14 @@ from .page import Bullets, Code, Fact, Facts, Notice, Page, Picture, Section, Te
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-__all__ = ["MOST_PICTURES", "page", "render"]
+__all__ = [
+    "MOST_PICTURES",
+    "both_styles",
+    "page",
+    "provenance_section",
+    "render",
+    "safety_section",
+]
 
 MOST_PICTURES = 12  # steps beyond these keep their tables and go without plots: a file stays small
 
@@ -55,7 +62,7 @@ def page(result: Result) -> Page:
             _uncertainty(result),
             _method(result),
             safety_section(),
-            _provenance(result),
+            provenance_section(result),
         ),
         foot=f"Made by {result.provenance.package}; layout by tauworkbench {__version__}.",
         sign_off=("Tested by, date", "Checked by, date"),
@@ -151,8 +158,8 @@ def _steps(result: Result) -> tuple[Section, ...]:
 
 def _pictures(result: Result, estimate: Estimate) -> list[Picture]:
     coverage = words.percent(estimate.coverage)
-    steps = _both(lambda style: figures.step_figure(result.trace, estimate, style=style))
-    ideal = _both(lambda style: figures.response_figure(estimate, style=style))
+    steps = both_styles(lambda style: figures.step_figure(result.trace, estimate, style=style))
+    ideal = both_styles(lambda style: figures.response_figure(estimate, style=style))
     return [
         Picture(
             *steps,
@@ -169,7 +176,7 @@ def _pictures(result: Result, estimate: Estimate) -> list[Picture]:
     ]
 
 
-def _both(draw: Callable[[figures.Style], Figure]) -> tuple[str, str]:
+def both_styles(draw: Callable[[figures.Style], Figure]) -> tuple[str, str]:
     """Draw once for a light page and once for a dark one."""
     return figures.data_uri(draw(figures.LIGHT)), figures.data_uri(draw(figures.DARK))
 
@@ -220,7 +227,8 @@ def _method(result: Result) -> Section:
     return Section("Method", (*map(Text, said), sources), "method")
 
 
-def _provenance(result: Result) -> Section:
+def provenance_section(result: Result | Recovery, command: str = "fit") -> Section:
+    """Return where the numbers come from, and the settings with which ``command`` makes them."""
     origin = result.provenance
     aside = int((~result.trace.kept).sum())
     rows = (
@@ -238,7 +246,8 @@ def _provenance(result: Result) -> Section:
         blocks += [
             Text(
                 "To reproduce: save the settings below as run.toml, beside the log that has this "
-                "SHA-256, install the package in this version, and run: tauworkbench fit run.toml"
+                "SHA-256, install the package in this version, and run: "
+                f"tauworkbench {command} run.toml"
             ),
             Code(tomlkit.dumps(settings), "Settings of the run file"),
         ]

@@ -33,6 +33,8 @@ __all__ = [
     "Style",
     "data_uri",
     "decimate",
+    "dress",
+    "legend",
     "response_alt",
     "response_figure",
     "step_alt",
@@ -79,7 +81,7 @@ def step_figure(trace: Trace, estimate: Estimate, *, style: Style = LIGHT) -> Fi
         draw_temperature(top, view)
         draw_residual(bottom, view, scale)
         for axes in (top, bottom):
-            _dress(axes, style)
+            dress(axes, style)
             draw_marks(axes, view)
         top.tick_params(labelbottom=False)
         bottom.set_xlabel("log time / s" if column == 0 else "log time / s, close-up of the onset")
@@ -87,7 +89,7 @@ def step_figure(trace: Trace, estimate: Estimate, *, style: Style = LIGHT) -> Fi
             top.set_ylabel("temperature / °C")
             bottom.set_ylabel(f"residual / {unit}")
             figure.align_ylabels([top, bottom])
-    _legend(figure, style)
+    legend(figure, style)
     return figure
 
 
@@ -130,7 +132,7 @@ def response_figure(estimate: Estimate, *, style: Style = LIGHT) -> Figure:
                 f"{name} % in {_short(time_s)} s", (time_s.value, height), (9, -11),
                 textcoords="offset points", fontsize=10, color=style.text,
             )  # fmt: skip
-    _dress(axes, style)
+    dress(axes, style)
     axes.set_xlim(0, longest)
     axes.set_ylim(0, 108)
     axes.set_xlabel("time since the change / s")
@@ -170,7 +172,8 @@ def data_uri(figure: Figure, kind: Literal["svg", "png"] = "svg", dpi: float = 1
     return f"data:{mime};base64,{base64.b64encode(drawn).decode('ascii')}"
 
 
-def _dress(axes: Axes, style: Style) -> None:
+def dress(axes: Axes, style: Style) -> None:
+    """Give axes the colours and the ticks that all figures share."""
     axes.set_facecolor(style.background)
     axes.grid(color=style.grid, lw=0.7)
     axes.set_axisbelow(True)
@@ -184,8 +187,8 @@ def _dress(axes: Axes, style: Style) -> None:
     axes.yaxis.label.set_color(style.text)
 
 
-def _legend(figure: Figure, style: Style) -> None:
-    """One legend for all panels, above them; each label once."""
+def legend(figure: Figure, style: Style) -> None:
+    """Put one legend for all panels above them; each label once."""
     entries: dict[str, Any] = {}
     for axes in figure.axes:
         handles, labels = axes.get_legend_handles_labels()

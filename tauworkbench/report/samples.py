@@ -1,15 +1,16 @@
-"""``trace.csv``: every sample with what the fit made of it, written in blocks of text."""
+"""``trace.csv`` and ``ambient.csv``: a row per sample, written in blocks of text."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 
 import numpy as np
 
+from ..ambient.record import Ambient
 from ..records import FloatArray
 from ..result import Result
 
-__all__ = ["TRACE_COLUMNS", "trace_csv_columns", "trace_rows"]
+__all__ = ["AMBIENT_COLUMNS", "TRACE_COLUMNS", "ambient_rows", "trace_csv_columns", "trace_rows"]
 
 # Column: how its numbers are written. Times keep a millisecond over 30 years, temperatures a
 # microkelvin; a noise needs few digits.
@@ -26,6 +27,7 @@ _FORMATS = {
     "step": "%.6g",
 }
 TRACE_COLUMNS = tuple(_FORMATS)
+AMBIENT_COLUMNS = ("time_s", "indicated_c", "ambient_c", "ambient_low_c", "ambient_high_c")
 
 
 def trace_csv_columns(result: Result) -> dict[str, FloatArray | None]:
@@ -68,11 +70,22 @@ def trace_rows(result: Result, rows: int = 20_000) -> Iterator[str]:
     Hand it to ``file.writelines``. Only one block's text is in memory at a time.
     """
     columns = trace_csv_columns(result)
+    yield from _rows({k: (_FORMATS[k], v) for k, v in columns.items()}, rows)
+
+
+def ambient_rows(ambient: Ambient, rows: int = 20_000) -> Iterator[str]:
+    """Yield ``ambient.csv`` as text, in the same way; one row per used sample."""
+    each = (ambient.time_s, ambient.indicated_c, ambient.ambient_c, ambient.low_c, ambient.high_c)
+    columns = zip(AMBIENT_COLUMNS, each, strict=True)
+    yield from _rows({k: ("%.13g" if k == "time_s" else "%.9g", v) for k, v in columns}, rows)
+
+
+def _rows(columns: Mapping[str, tuple[str, FloatArray | None]], rows: int) -> Iterator[str]:
+    """Yield columns with their number formats as CSV; None is a column of empty cells."""
     yield ",".join(columns) + "\n"
-    present = [v for v in columns.values() if v is not None]
-    cells = ("" if v is None else _FORMATS[k] for k, v in columns.items())
-    line = ",".join(cells) + "\n"
-    for start in range(0, result.trace.time_s.size, rows):
+    present = [v for _, v in columns.values() if v is not None]
+    line = ",".join("" if v is None else form for form, v in columns.values()) + "\n"
+    for start in range(0, present[0].size, rows):
         block = np.stack([v[start : start + rows] for v in present], axis=1)
         block[~np.isfinite(block)] = np.nan
         text = line * len(block) % tuple(block.ravel().tolist())

@@ -37,6 +37,7 @@ QUANTITIES = {
     "internal-heating": "response to heat made inside the sensor, "
     "and the response to a change of the medium that it implies",
     "cooling-after-heating": "cooling after heat was made inside the sensor",
+    "ambient": "the temperature of the medium behind the sensor's own",
 }
 ONSETS = {
     "found": "found in the record: the apparent onset",

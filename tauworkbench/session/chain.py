@@ -23,7 +23,7 @@ from .marker import Onset, marker_onset
 from .memory import Stage
 from .saved import RunResult
 
-__all__ = ["STAGES"]
+__all__ = ["STAGES", "provenance", "run_info"]
 
 _LARGE_BYTES = 20_000_000  # a log above this takes a second or more to read
 _CONDITIONS = (
@@ -92,28 +92,36 @@ def _estimates(choices: Choices, inputs: Mapping[str, Any], watch: Watch) -> tup
     )
 
 
+def run_info(choices: Choices, quantity: str) -> RunInfo:
+    """Return what was tested, with the conditions that the run file states."""
+    test = choices.test
+    return RunInfo(
+        name=choices.name,
+        test=test.kind or "",
+        quantity=quantity,
+        sensor=test.sensor,
+        medium=test.medium,
+        speed_m_s=test.speed_m_s,
+        conditions={k: v for k in _CONDITIONS if (v := getattr(test, k)) is not None},
+    )
+
+
+def provenance(choices: Choices, log: Any, channels: Any) -> Provenance:
+    """Return what reproduces a result of this log."""
+    return Provenance(
+        log_sha256=log.sha256,
+        time_origin=channels.time_origin,
+        settings=choices.to_dict(),
+        log_file=choices.log.file or "",
+    )
+
+
 def _result(choices: Choices, inputs: Mapping[str, Any], _watch: Watch) -> RunResult:
-    test, log = choices.test, inputs["log"]
-    conditions = {k: v for k in _CONDITIONS if (v := getattr(test, k)) is not None}
-    kind = test.kind or ""
     return RunResult(
-        run=RunInfo(
-            name=choices.name,
-            test=kind,
-            quantity=QUANTITY[kind],
-            sensor=test.sensor,
-            medium=test.medium,
-            speed_m_s=test.speed_m_s,
-            conditions=conditions,
-        ),
+        run=run_info(choices, QUANTITY[choices.test.kind or ""]),
         trace=inputs["trace"],
         estimates=inputs["estimates"],
-        provenance=Provenance(
-            log_sha256=log.sha256,
-            time_origin=inputs["channels"].time_origin,
-            settings=choices.to_dict(),
-            log_file=choices.log.file or "",
-        ),
+        provenance=provenance(choices, inputs["log"], inputs["channels"]),
     )
 
 

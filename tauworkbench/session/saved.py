@@ -16,6 +16,7 @@ from ..records import (
     BudgetLine,
     Candidate,
     Combined,
+    Covariance,
     Direct,
     FitSummary,
     NoiseSummary,
@@ -26,9 +27,10 @@ from ..uncertainty import Quantity
 from .store import json_text, write_files
 from .toml_file import is_plain_file
 
-__all__ = ["RunResult", "SavedResult", "read_results", "results_from_dict"]
+__all__ = ["RunResult", "SavedResult", "load_json", "read_results", "results_from_dict"]
 
 _MOST_BYTES = 50_000_000
+_HOW = "give the result.json that `tauworkbench fit` wrote"
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,7 +88,7 @@ def read_results(path: str | os.PathLike[str]) -> tuple[SavedResult, ...]:
         Where the file can't be read, or isn't a result of this package.
     """
     where = str(path)
-    return results_from_dict(_load(Path(path), where), where)
+    return results_from_dict(load_json(Path(path), _HOW), where)
 
 
 def results_from_dict(data: Any, where: str) -> tuple[SavedResult, ...]:
@@ -97,7 +99,7 @@ def results_from_dict(data: Any, where: str) -> tuple[SavedResult, ...]:
     InputError
         At ``where``, when it isn't a result of this package.
     """
-    how = "give the result.json that `tauworkbench fit` wrote"
+    how = _HOW
     if not isinstance(data, dict) or data.get("format") not in (FORMAT, FORMAT_MANY):
         raise InputError(where, "is not a result of tauworkbench", how)
     if data.get("version") != VERSION:
@@ -111,8 +113,15 @@ def results_from_dict(data: Any, where: str) -> tuple[SavedResult, ...]:
         raise InputError(where, what, how) from None
 
 
-def _load(path: Path, where: str) -> Any:
-    how = "give the result.json that `tauworkbench fit` wrote"
+def load_json(path: Path, how: str) -> Any:
+    """Return a JSON file's content; ``how`` says which file is wanted.
+
+    Raises
+    ------
+    InputError
+        Where there is none, it is too large, or isn't JSON with finite numbers.
+    """
+    where = str(path)
     if not is_plain_file(path):
         raise InputError(where, "there is no such file", how)
     try:
@@ -144,6 +153,8 @@ def _saved(data: Mapping[str, Any]) -> SavedResult:
     fit["lag_s"] = Quantity.from_dict(fit["lag_s"])
     fit["noise"] = NoiseSummary(**fit["noise"])
     fit["candidates"] = tuple(Candidate(**c) for c in fit["candidates"])
+    if "covariance" in fit:
+        fit["covariance"] = _covariance(fit["covariance"])
     direct, budget = data.get("direct"), data.get("budget")
     return SavedResult(
         run=RunInfo(**data["run"]),
@@ -155,6 +166,14 @@ def _saved(data: Mapping[str, Any]) -> SavedResult:
         dissipation=_quantities(data.get("dissipation", {})),
         cautions=tuple(map(str, data.get("cautions", ()))),
     )
+
+
+def _covariance(data: Mapping[str, Any]) -> Covariance:
+    names = tuple(map(str, data["names"]))
+    matrix = tuple(tuple(map(float, row)) for row in data["matrix"])
+    if [len(row) for row in matrix] != [len(names)] * len(names):
+        raise ValueError("covariance, which isn't square")
+    return Covariance(names, matrix)
 
 
 def _quantities(data: Mapping[str, Any]) -> dict[str, Quantity]:
