@@ -73,6 +73,9 @@ class SensorSpeedLaw:
         Standard uncertainty that all runs share, as a share of the lag.
     product_relative_u : float
         Of the product of the two time constants.
+    inner_s : Quantity
+        The part that speed leaves alone [s]; where it can't be told from zero, zero with the
+        upper limit that the lags leave.
     cautions : tuple of str
     """
 
@@ -85,6 +88,7 @@ class SensorSpeedLaw:
     speeds_m_s: tuple[float, float]
     shared_relative: float
     product_relative_u: float
+    inner_s: Quantity
     cautions: tuple[str, ...] = ()
 
     @property
@@ -95,8 +99,21 @@ class SensorSpeedLaw:
     @property
     def quantile(self) -> float:
         """Coverage factor at 95 %."""
-        freedom = self.fit.degrees_of_freedom
-        return t_quantile(COVERAGE, freedom if freedom > 0 else math.inf)
+        return _quantile(self.fit)
+
+    @property
+    def film_s(self) -> Quantity:
+        """The film's part at 1 m/s [s]."""
+        return self._quantity(1)
+
+    @property
+    def exponent(self) -> Quantity:
+        """Exponent of the speed."""
+        return self._quantity(2)
+
+    def _quantity(self, i: int) -> Quantity:
+        values = (self.law.inner_s, self.law.film_s, self.law.exponent)
+        return Quantity.wald(values[i], math.sqrt(self.fit.covariance[i, i]), self.quantile)
 
     def band_s(self, speed_m_s: FloatArray) -> FloatArray:
         """Half width of the law's 95 % band at speeds, what all runs share included [s]."""
@@ -139,17 +156,16 @@ class SensorSpeedLaw:
 
     def as_dict(self) -> dict[str, Any]:
         """Return its block of ``campaign.json``."""
-        fit, law, k = self.fit, self.law, self.quantile
-        sd = np.sqrt(np.diag(fit.covariance))
+        fit, law = self.fit, self.law
         speeds = sorted({p.speed_m_s for p in self.points})
         out = {
             "sensor": self.sensor,
             "medium": self.medium,
             "quantity": self.quantity,
             "formula": "lag_s = inner_s + film_s * speed_m_s ** -exponent",
-            "inner_s": Quantity.wald(law.inner_s, sd[0], k),
-            "film_s": Quantity.wald(law.film_s, sd[1], k),
-            "exponent": Quantity.wald(law.exponent, sd[2], k),
+            "inner_s": self.inner_s,
+            "film_s": self.film_s,
+            "exponent": self.exponent,
             "exponent_is": self.exponent_is,
             "product_s2": law.product_s2,
             "product_relative_u": self.product_relative_u,
@@ -210,7 +226,10 @@ def _law(media: Sequence[Media], settings: CampaignSettings) -> SensorSpeedLaw:
         known, how = _KNOWN, "assumed"
         fit = fit_speed_law(*data, exponent=known)
     inner_free = fit.law.inner_s >= 0
+    k, u = _quantile(fit), math.sqrt(fit.covariance[0, 0])
+    inner = Quantity.wald(fit.law.inner_s, u, k)
     if not inner_free:
+        inner = Quantity(0.0, None, 0.0, max(fit.law.inner_s + k * u, 0.0))
         fit = fit_speed_law(*data, exponent=known, inner=False)
     product, product_u = _product(media, fit.law.exponent)
     law = SpeedLaw(fit.law.inner_s, fit.law.film_s, fit.law.exponent, product)
@@ -223,8 +242,12 @@ def _law(media: Sequence[Media], settings: CampaignSettings) -> SensorSpeedLaw:
     cautions = tuple(_cautions(media, fit, how, inner_free))
     return SensorSpeedLaw(
         media[0].sensor, media[0].medium, media[0].quantity, fit, how, points,
-        (min(speeds), max(speeds)), _shared_relative(media), product_u, cautions,
+        (min(speeds), max(speeds)), _shared_relative(media), product_u, inner, cautions,
     )  # fmt: skip
+
+
+def _quantile(fit: SpeedFit) -> float:
+    return t_quantile(COVERAGE, fit.degrees_of_freedom if fit.degrees_of_freedom > 0 else math.inf)
 
 
 def _exponent(speeds: int, settings: CampaignSettings) -> tuple[tuple[float, float] | None, str]:

@@ -28,6 +28,12 @@ def arguments(parser: argparse.ArgumentParser) -> None:
         default=0,
         help="fit at most so many runs at once; by default one per core",
     )
+    parser.add_argument(
+        "--decimal",
+        choices=("point", "comma"),
+        default="point",
+        help="decimal sign of the tables; with a comma they are separated by semicolons",
+    )
     add_quiet(parser)
 
 
@@ -42,12 +48,17 @@ def run(args: argparse.Namespace) -> int:
         found = campaign(
             args.campaign_file, watch=watch, refit=args.refit, processes=max(args.processes, 0)
         )
-        watch.report(0, 0, "writing the tables")
-        found.save(folder)
+        watch.report(0, 0, "writing the tables and the report")
+        found.save(folder, decimal=args.decimal)
     if not args.quiet:
         runs, failed = len(found.runs), len(found.failed)
         kept = f", {found.kept} of them fitted earlier" if found.kept else ""
         print(f"{found.settings.name}: {runs} runs, {failed} failed{kept}")
+        for media in found.media:
+            low, high = media.combined.low, media.combined.high
+            decision = "" if media.decision is None else f", {media.decision.decision}"
+            times = f"{media.t63.mean:.4g} s ({low:.4g} to {high:.4g} s{decision})"
+            print(f"  {media.title}: 63.2 % in {times}")
         for one in found.failed:
             print(f"  failed: {one.run}: {one.error}")
         print(f"written to {folder}")

@@ -7,102 +7,52 @@ import time
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
 
-from ..campaign.analysis import Analysis, analyse
-from ..campaign.media import MEDIA_COLUMNS, Media, media_rows
-from ..campaign.records import CampaignRun, CampaignSettings
+from ..campaign.analysis import analyse
+from ..campaign.campaign import Campaign
+from ..campaign.media import MEDIA_COLUMNS, media_rows
+from ..campaign.records import CampaignRun
 from ..campaign.rows import RUN_COLUMNS, csv_text, run_rows
-from ..errors import __version__
 from ..progress import SILENT, Watch, step
-from ..result import FORMAT, VERSION, jsonable
 from .cache import Cache, cache_folder
 from .campaign_file import RunFile, read_campaign
 from .one_run import Outcome
-from .saved import SavedResult, results_from_dict
+from .saved import results_from_dict
 from .store import json_text, write_files
 from .workers import fit_each
 
 __all__ = ["CampaignResult", "campaign"]
 
-CAMPAIGN_FORMAT, CAMPAIGN_VERSION = "tauworkbench.campaign", 1
-
 
 @dataclass(frozen=True, eq=False)
-class CampaignResult:
-    """Many runs' results.
+class CampaignResult(Campaign):
+    """A `Campaign` that knows how to write itself."""
 
-    Attributes
-    ----------
-    settings : CampaignSettings
-        What ``[campaign]`` says.
-    table : dict
-        ``[campaign]`` as given.
-    runs : tuple of CampaignRun
-        In the order of their paths, failed ones with their line.
-    kept : int
-        How many runs an earlier campaign had fitted already.
-    analysis : Analysis
-        What the runs say together.
-    cautions : tuple of str
-        On the campaign itself; each run's own are with the run.
-    """
-
-    settings: CampaignSettings
-    table: dict[str, Any]
-    runs: tuple[CampaignRun, ...]
-    analysis: Analysis
-    kept: int = 0
-    cautions: tuple[str, ...] = ()
-
-    @property
-    def results(self) -> tuple[SavedResult, ...]:
-        """Each fitted step."""
-        return tuple(r for run in self.runs for r in run.results if isinstance(r, SavedResult))
-
-    @property
-    def media(self) -> tuple[Media, ...]:
-        """Each sensor in each medium at each speed."""
-        return self.analysis.media
-
-    @property
-    def failed(self) -> tuple[CampaignRun, ...]:
-        """The runs that failed."""
-        return tuple(run for run in self.runs if run.error)
-
-    def as_dict(self) -> dict[str, Any]:
-        """Return the content of ``campaign.json``."""
-        each = [{"format": FORMAT, "version": VERSION, **jsonable(r)} for r in self.results]
-        return {
-            "format": CAMPAIGN_FORMAT,
-            "version": CAMPAIGN_VERSION,
-            "name": self.settings.name,
-            "results": each,
-            **self.analysis.as_dict(),
-            "failed": [{"run": r.run, "error": r.error} for r in self.failed],
-            "cautions": list(self.cautions),
-            "provenance": {"package": f"tauworkbench {__version__}", "settings": self.table},
-        }
-
-    def save(self, folder: str | os.PathLike[str]) -> Path:
-        """Write ``runs.csv``, ``media.csv`` and ``campaign.json`` into a folder.
+    def save(self, folder: str | os.PathLike[str], *, decimal: str = "point") -> Path:
+        """Write ``runs.csv``, ``media.csv``, ``campaign.json`` and ``report.html`` into a folder.
 
         Parameters
         ----------
         folder : path
             Made when absent. An older campaign in it is replaced only when all files are complete.
+        decimal : "point" or "comma"
+            A comma in the tables' numbers makes the semicolon their delimiter.
 
         Raises
         ------
         InputError
             Where the folder can't be written.
         """
+        from ..report.campaign_page import render_campaign
+
+        media = media_rows(self.analysis.media)
         return write_files(
             folder,
             {
-                "runs.csv": csv_text(RUN_COLUMNS, run_rows(self.runs)),
-                "media.csv": csv_text(MEDIA_COLUMNS, media_rows(self.analysis.media)),
+                "runs.csv": csv_text(RUN_COLUMNS, run_rows(self.runs), decimal=decimal),
+                "media.csv": csv_text(MEDIA_COLUMNS, media, decimal=decimal),
                 "campaign.json": json_text(self.as_dict()),
+                "report.html": render_campaign(self),
             },
         )
 

@@ -82,3 +82,18 @@ def test_out_quiet_and_kept_results(campaign_file, tmp_path, capsys):
     assert main(["campaign", str(campaign_file), "--out", str(out)]) == 0
     assert "2 of them fitted earlier" in capsys.readouterr().out
     assert (out / "runs.csv").read_bytes() == first
+
+
+def test_media_and_report_are_written_and_decimal_commas_where_asked(campaign_file):
+    campaign_file.write_text(CAMPAIGN + "limit_s = 0.5\n")
+    assert main(["campaign", str(campaign_file), "--decimal", "comma", "--quiet"]) == 0
+    folder = campaign_file.with_suffix("")
+    assert names(folder) == ["campaign.json", "media.csv", "report.html", "runs.csv"]
+    header, row = (folder / "media.csv").read_text().splitlines()
+    found = dict(zip(header.split(";"), row.split(";"), strict=True))
+    assert header.startswith("sensor;medium;speed_m_s;runs;t63_s;t63_u_s;t63_low_s;t63_high_s;"
+                             "repeatability_s;heating_minus_cooling_s;decision")  # fmt: skip
+    assert found["runs"] == "2"
+    assert found["decision"] == "pass"
+    assert float(found["t63_low_s"].replace(",", ".")) < 0.3
+    assert float(found["t63_high_s"].replace(",", ".")) > 0.3
