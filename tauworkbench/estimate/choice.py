@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numpy as np
+
 from ..errors import EstimateError
 from ..records import Candidate, NoiseSummary
 from ..thermal.responses import response_time
@@ -81,6 +83,9 @@ def _objection(fit: Fitted, gain: float, scale: Scale, record: Record) -> str:
     """Why a richer model isn't taken; empty when it is."""
     if gain <= LEAST_GAIN:
         return f"AICc gain {gain:.1f}, more than {LEAST_GAIN:g} needed"
+    slowest, length = fit.transfer.time_constants_s[0], float(np.ptp(record.time_s))
+    if slowest > length:
+        return f"its slowest time constant of {slowest:.3g} s is longer than the record"
     if fit.form.poles == 2 and fit.form.onset == "found":
         fastest = fit.transfer.time_constants_s[1]
         if fastest < record.spacing_s:

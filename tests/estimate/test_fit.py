@@ -300,3 +300,14 @@ def test_moving_baseline_is_named():
     assert any("the level before the step moved by +1.2 K, 3.0 %" in c for c in estimate.cautions)
     still = tw.fit_step(made)
     assert not any("moved by" in c for c in still.cautions)
+
+
+def test_richer_model_with_a_time_constant_beyond_the_record_is_refused():
+    """A drifting level looks like a second, endless pole; it isn't taken for one."""
+    time = np.linspace(0, 60, 1500)
+    value = 30 + 50 * np.exp(-time / 6) - 0.02 * time
+    value += np.random.default_rng(3).normal(0, 0.02, time.size)
+    estimate = tw.fit_step(tw.Trace(time_s=time, temperature_c=value), onset_s="before")
+    assert estimate.fit.model == "one-pole"
+    (other,) = [c for c in estimate.fit.candidates if not c.chosen]
+    assert "longer than the record" in other.refused
