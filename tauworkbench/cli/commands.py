@@ -35,5 +35,6 @@ COMMANDS: tuple[Command, ...] = (
     Command("fit", "fit", "fit a logged step: response times, time constants, report"),
     Command("recover", "recover", "recover the ambient behind a field log, with a band, report"),
     Command("campaign", "campaign", "fit many runs: a table per run and per medium, report"),
+    Command("plan", "plan", "before the test: what uncertainty to expect, and what limits it"),
     Command("help", "explain", "say what a key of the run file means and takes"),
 )
