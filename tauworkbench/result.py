@@ -110,7 +110,7 @@ class Recovery:
     """A field log's ambient with the trace that it is behind and the provenance.
 
     ``correction``, for a sensor's own firmware, is there when it was asked for; ``listings`` are
-    programs of a few lines that do it, by file name.
+    programs of a few lines that do it, by language.
     """
 
     run: RunInfo
@@ -130,7 +130,7 @@ class Recovery:
         """Return the content of ``ambient.json``."""
         blocks = {**self.ambient.as_dict(), "run": self.run}
         if self.correction is not None:
-            blocks["correction"] = self.correction.as_dict()
+            blocks["correction"] = {**self.correction.as_dict(), "listings": self.listings}
         blocks |= {"cautions": self.cautions, "provenance": self.provenance}
         return {k: jsonable(v) for k, v in blocks.items()}
 

@@ -31,7 +31,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
         metavar="INTERVAL_S",
         type=float,
         help="design also a correction of a few lines for firmware with a reading every "
-        "INTERVAL_S seconds, in Python and in C",
+        "INTERVAL_S seconds, in Python and in C: in ambient.json and in the report",
     )
     parser.add_argument(
         "--noise-gain",

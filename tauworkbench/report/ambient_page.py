@@ -155,7 +155,8 @@ def _firmware(recovery: Recovery) -> tuple[Section, ...]:
         Notice("Not a protective function", f"{caution}."),
         said.correction_table(made),
         picture,
-        *(Code(text, f"Listing {name}") for name, text in recovery.listings.items()),
+        Text("To copy; the same stands in ambient.json under correction, listings."),
+        *(Code(text, f"Listing in {name}") for name, text in recovery.listings.items()),
     )
     return (Section("A correction for firmware", blocks, "firmware"),)
 

@@ -8,7 +8,6 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 
@@ -56,8 +55,6 @@ class RecoveredRun(Recovery):
     def save(self, folder: str | os.PathLike[str], *, watch: Watch = SILENT) -> Path:
         """Write ``ambient.csv``, ``ambient.json`` and ``report.html`` into a folder.
 
-        With a correction for firmware also its listings, ``lag_correction.py`` and ``.c``.
-
         Parameters
         ----------
         folder : path
@@ -74,11 +71,10 @@ class RecoveredRun(Recovery):
         from ..report.samples import ambient_rows
 
         step(watch, 0.0, 1.0, "writing the report")
-        files: dict[str, Any] = {
+        files = {
             "ambient.json": json_text(self.as_dict()),
             "report.html": render(self),
             "ambient.csv": ambient_rows(self.ambient),
-            **self.listings,
         }
         step(watch, 0.5, 1.0, "writing the files")
         return write_files(folder, files)
@@ -193,10 +189,7 @@ def _firmware(
     made = design_correction(
         dynamics.fixed.transfer, wanted.interval_s, noise_gain=wanted.noise_gain
     )
-    return made, {
-        "lag_correction.py": python_listing(made),
-        "lag_correction.c": c_listing(made),
-    }
+    return made, {"python": python_listing(made), "c": c_listing(made)}
 
 
 def _law_caution(dynamics: Dynamics, ambient: Ambient) -> Iterator[str]:
