@@ -13,7 +13,7 @@ from pathlib import Path
 
 HERE = Path(__file__).resolve().parent
 sys.path.insert(0, str(HERE.parent / "tests"))
-WIDTH, HEIGHT = 1120, 1000
+WIDTH, HEIGHT = 1120, 1380
 
 
 def main() -> None:
@@ -26,9 +26,14 @@ def main() -> None:
     with serve(home / "home", home / "work") as served, sync_playwright() as play:
         browser = play.chromium.launch(executable_path=chromium, args=CHROMIUM_ARGUMENTS)
         context = browser.new_context(viewport={"width": WIDTH, "height": HEIGHT})
+        context.set_default_timeout(90_000)
         page = open_page(context, served)
         wait_for_plot(page)
         page.wait_for_selector(".tau-answer-fresh .tau-headline")
+        page.wait_for_function(
+            "document.querySelector('.tau-plot-picture').offsetWidth"
+            " === document.querySelector('.tau-plot').offsetWidth"
+        )
         page.wait_for_timeout(500)
         page.screenshot(path=HERE / "bench.png")
         browser.close()

@@ -52,7 +52,8 @@ def result_shown(result: Result, estimate: Estimate) -> ResultShown:
         on = estimate.budget.on.removeprefix("response_time_s.")
         tables.append(table_html(budget_table(estimate.budget, estimate.response_time_s.get(on))))
     cautions = tuple(dict.fromkeys((*result.trace.cautions, *estimate.cautions)))
-    return ResultShown(_headline(estimate), "".join(tables), cautions)
+    headline, basis = _headline(estimate)
+    return ResultShown(headline, basis, "".join(tables), cautions)
 
 
 def report_of(found: Resolved) -> str:
@@ -94,12 +95,13 @@ def _row(cells: tuple[str, ...], numeric: frozenset[int]) -> str:
     return f"<tr>{''.join(out)}</tr>"
 
 
-def _headline(estimate: Estimate) -> str:
-    """The number that everybody asks for first, with its interval."""
+def _headline(estimate: Estimate) -> tuple[str, str]:
+    """The number that everybody asks for first with its interval, and what stands behind them."""
     t63 = estimate.response_time_s.get("63.2")
     model = words.model_words(estimate.fit.model)
     if t63 is None:
-        return model
-    t63, share, held = best(estimate, t63)
+        return model, ""
+    t63, name, held = best(estimate, t63)
     value = words.number(t63.value, words.decimals(t63))
-    return f"63.2 % of a step in {value} s ({share}: {words.interval(t63, 's')}; {held}); {model}"
+    number = f"63.2 % of a step in {value} s, {words.interval(t63, 's')} at {name}"
+    return number, f"{model}; the interval: {held}"

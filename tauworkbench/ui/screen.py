@@ -156,10 +156,12 @@ class ProgressShown:
 class ResultShown:
     """The answer; ``stale`` when the choices have moved on since.
 
+    ``headline`` is the number with its interval, ``basis`` what stands behind them.
     ``tables`` is HTML made by us, with every text of the user's escaped.
     """
 
     headline: str = ""
+    basis: str = ""
     tables: str = ""
     cautions: tuple[str, ...] = ()
     stale: bool = False

@@ -112,7 +112,7 @@ def test_text_of_users_is_escaped(page):
     page.set_field(but(FIELDS[0], problem=bad, help=bad))
     page.set_part(but(PART, words=bad, title=bad, problem=bad, notes=(Note(bad, (bad,)),)))
     page.set_status(Status(bad))
-    page.set_result(ResultShown(bad, "", (bad,)))
+    page.set_result(ResultShown(bad, bad, "", (bad,)))
     page.set_offer(bad)
     page.set_report(bad)
     written = "".join(x.value for x in everything(page.widget) if isinstance(x, w.HTML))
@@ -164,7 +164,7 @@ def test_progress_stop_and_history_are_enabled_as_told(page, heard):
     assert not page._fit.disabled
     assert not page._save_result.disabled
     page.set_code(Code("a = 1", "print()"))
-    page.set_result(ResultShown("9 s", "", (), stale=True))
+    page.set_result(ResultShown("9 s", stale=True))
     assert "earlier choices" in page._answer.value
     assert heard == []
 

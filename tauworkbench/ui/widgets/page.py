@@ -131,6 +131,8 @@ class Page:
             else ""
         )
         head = f'<p class="tau-headline">{escape(result.headline)}</p>' if result.headline else ""
+        if result.basis:
+            head += f'<p class="tau-basis">{escape(result.basis)}</p>'
         kind = "tau-answer-stale" if result.stale else "tau-answer-fresh"
         self._answer.value = f'<div class="{kind}">{head}{stale}{listed}{result.tables}</div>'
 
