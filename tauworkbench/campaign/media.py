@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from ..records import BudgetLine
+from .cautions import media_cautions
 from .decision import Decision, Side, decide
 from .outlying import outlying
 from .random_effects import (
@@ -31,8 +32,6 @@ MEDIA_COLUMNS = (
     "sensor", "medium", "speed_m_s", "runs", "t63_s", "t63_u_s", "t63_low_s", "t63_high_s",
     "repeatability_s", "heating_minus_cooling_s", "decision", "quantity",
 )  # fmt: skip
-FEW, FAR = 3, 0.10  # repeats asked for; and how far from their mean they may lie
-_ALIKE = ("mounting", "immersion_mm", "pressure_pa")
 
 
 @dataclass(frozen=True, eq=False)
@@ -220,7 +219,7 @@ def _media(key: tuple[Any, ...], members: tuple[Member, ...], settings: Campaign
         sensor, medium, speed, quantity, members, t63, lag, shared, combined,
         tuple(members[i].run for i in apart), delta, decision, (),
     )  # fmt: skip
-    return Media(**{**vars(media), "cautions": tuple(_cautions(media))})
+    return Media(**{**vars(media), "cautions": tuple(media_cautions(media))})
 
 
 def _shared_lines(members: tuple[Member, ...], t63: Pooled) -> tuple[BudgetLine, ...]:
@@ -268,41 +267,6 @@ def _heating_minus_cooling(members: tuple[Member, ...]) -> Difference | None:
         return None
     means = [pool([m.t63_s for m in s], [m.t63_u_s for m in s]) for s in sides]
     return difference(means[0], means[1])
-
-
-def _cautions(media: Media) -> Iterator[str]:
-    where, mean = media.title, media.t63.mean
-    count = len(media.members)
-    if count < FEW:
-        runs = "1 run" if count == 1 else f"{count} runs"
-        yield (
-            f"{where}: {runs}; {FEW} repeats or more would show how well it repeats"
-            + (", which the interval does not hold" if count == 1 else "")
-        )
-    for member in media.members:
-        apart = member.t63_s / mean - 1
-        if count > 1 and abs(apart) > FAR:
-            yield (
-                f"{where}: {member.run} lies {abs(apart):.0%} {'above' if apart > 0 else 'below'} "
-                f"the mean, more than {FAR:.0%}; look at that run, and repeat it"
-            )
-    for run in media.outlying:
-        yield (
-            f"{where}: {run} lies apart from the others by more than chance explains; it is in the "
-            "mean; look for its cause"
-        )
-    delta = media.heating_minus_cooling
-    if delta is not None and delta.significant:
-        yield (
-            f"{where}: heating takes {delta.value:+.3g} s against cooling ({delta.low:.3g} to "
-            f"{delta.high:.3g} s); a law or circuit that is off, or a film that changes with "
-            "temperature, does that; report the two apart"
-        )
-    for name in _ALIKE:
-        given = {str(m.result.run.conditions.get(name)) for m in media.members}
-        if len(given) > 1:
-            words = ", ".join(sorted(given)).replace("None", "not stated")
-            yield f"{where}: runs of unlike {name} ({words}) are pooled; name them as media apart"
 
 
 def group_by(

@@ -7,7 +7,7 @@ follows from the network that lag and product of the time constants describe.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -19,6 +19,7 @@ from ..result import jsonable
 from ..thermal.responses import response_time
 from ..thermal.speed_law import SpeedLaw
 from ..uncertainty import Quantity
+from .cautions import FREE_FROM, KNOWN_EXPONENT, law_cautions, title_of
 from .media import Media
 from .random_effects import COVERAGE, t_quantile
 from .records import CampaignSettings
@@ -26,10 +27,6 @@ from .speed_fit import SpeedFit, fit_speed_law
 
 __all__ = ["Prediction", "SensorSpeedLaw", "SpeedPoint", "speed_laws"]
 
-FREE_FROM = 4  # speeds from which on the exponent is fitted
-# Film coefficients of cylinders, spheres and small beads in cross flow go with 0.25 to 0.6 of the
-# speed (from memory; see thermal.speed_law): 0.5 give or take 0.1 holds them at about 95 %.
-_KNOWN = (0.5, 0.1)
 _GIVEN_U = 0.05
 _T63 = -math.expm1(-1.0)
 
@@ -206,7 +203,7 @@ def speed_laws(
         try:
             law = _law(found, settings)
         except EstimateError as error:
-            cautions.append(f"{_title(found[0])}: no speed law: {error.what}; {error.how}")
+            cautions.append(f"{title_of(found[0])}: no speed law: {error.what}; {error.how}")
             continue
         laws.append(law)
         cautions += law.cautions
@@ -223,7 +220,7 @@ def _law(media: Sequence[Media], settings: CampaignSettings) -> SensorSpeedLaw:
     known, how = _exponent(len(media), settings)
     fit = fit_speed_law(*data, exponent=known)
     if fit.at_bound and known is None:
-        known, how = _KNOWN, "assumed"
+        known, how = KNOWN_EXPONENT, "assumed"
         fit = fit_speed_law(*data, exponent=known)
     inner_free = fit.law.inner_s >= 0
     k, u = _quantile(fit), math.sqrt(fit.covariance[0, 0])
@@ -239,7 +236,7 @@ def _law(media: Sequence[Media], settings: CampaignSettings) -> SensorSpeedLaw:
         for (v, m), r in zip(members, fit.residual_s, strict=True)
     )
     speeds = [one.speed_m_s or 0.0 for one in media]
-    cautions = tuple(_cautions(media, fit, how, inner_free))
+    cautions = tuple(law_cautions(media, fit, how, inner_free))
     return SensorSpeedLaw(
         media[0].sensor, media[0].medium, media[0].quantity, fit, how, points,
         (min(speeds), max(speeds)), _shared_relative(media), product_u, inner, cautions,
@@ -253,7 +250,7 @@ def _quantile(fit: SpeedFit) -> float:
 def _exponent(speeds: int, settings: CampaignSettings) -> tuple[tuple[float, float] | None, str]:
     if isinstance(settings.speed_exponent, int | float):
         return (float(settings.speed_exponent), _GIVEN_U), "given"
-    return (None, "fitted") if speeds >= FREE_FROM else (_KNOWN, "assumed")
+    return (None, "fitted") if speeds >= FREE_FROM else (KNOWN_EXPONENT, "assumed")
 
 
 def _product(media: Sequence[Media], exponent: float) -> tuple[float, float]:
@@ -281,34 +278,3 @@ def _shared_relative(media: Sequence[Media]) -> float:
         math.hypot(*(x.standard_uncertainty for x in one.shared if x.side is None)) / one.t63.mean
         for one in media
     )
-
-
-def _title(one: Media) -> str:
-    return f"{one.sensor or 'sensor not stated'}, {one.medium or 'medium not stated'}"
-
-
-def _cautions(media: Sequence[Media], fit: SpeedFit, how: str, inner_free: bool) -> Iterator[str]:
-    where = _title(media[0])
-    if how == "assumed":
-        yield (
-            f"{where}: {len(media)} speeds don't give the exponent of the speed, which is taken as "
-            f"{_KNOWN[0]} +- {_KNOWN[1]}; test at {FREE_FROM} speeds or more, spread wide"
-        )
-    if not inner_free:
-        yield (
-            f"{where}: the lags show no part that speed leaves alone; it is taken as zero, and "
-            "the law should not be used above the fastest speed tested"
-        )
-    if fit.degrees_of_freedom <= 0:
-        yield f"{where}: no run is left over to check the speed law; repeat runs or add speeds"
-    if any(line.side for one in media for line in one.shared):
-        yield (
-            f"{where}: onsets were found, so the lags under the speed law are lower bounds; "
-            "log a marker of the onset"
-        )
-    speeds = [one.speed_m_s or 0.0 for one in media]
-    if max(speeds) < 3 * min(speeds):
-        yield (
-            f"{where}: the speeds span only a factor of {max(speeds) / min(speeds):.2g}; "
-            "a wider span ties the exponent and the inner part down"
-        )
