@@ -10,6 +10,9 @@ from .dialects import BOMS, ENCODINGS, FOREIGN, LETTERS, TRADE_SIGNS
 
 __all__ = ["encoding_of"]
 
+# Of these the bytes have been asked before; charset-normalizer would see them in noise.
+_WIDE = ("utf_7", "utf_16", "utf_16_le", "utf_16_be", "utf_32", "utf_32_le", "utf_32_be")
+
 _FEW_RUNS = 4
 
 
@@ -92,5 +95,5 @@ def _asked(head: bytes) -> str:
 
     # Only bytes beyond ASCII tell; a few lines that hold them are quick to try.
     lines = [line for line in head.splitlines() if not line.isascii()][:50]
-    best = from_bytes(b"\n".join(lines)).best()
+    best = from_bytes(b"\n".join(lines), cp_exclusion=list(_WIDE)).best()
     return "cp1252" if best is None else best.encoding

@@ -77,40 +77,19 @@ class TextSource:
     def _batch(self, piece: bytes, first: int, numbers: Sequence[int]) -> Batch:
         """Parse one piece whose first line has this number in the file."""
         import pyarrow as pa
-        from pyarrow import csv
 
         delimiter, piece = self._prepared(piece)
         width = self.layout.width
         rows, piece = _filled(piece, first, width)
         if not piece:
             return Batch(rows, [pa.array([], pa.string()) for _ in numbers])
-        odd: list[tuple[int, str]] = []
-
-        def put_aside(row: Any) -> str:
-            odd.append((int(row.number), str(row.text)))
-            return "skip"
-
-        names = [f"f{i}" for i in range(1, width + 1)]
-        wanted = [names[n - 1] for n in numbers]
-        table = csv.read_csv(
-            io.BytesIO(piece),
-            read_options=csv.ReadOptions(
-                use_threads=False, column_names=names, block_size=len(piece) + 1
-            ),
-            parse_options=csv.ParseOptions(
-                delimiter=delimiter,
-                quote_char='"' if b'"' in piece else False,
-                ignore_empty_lines=False,
-                invalid_row_handler=put_aside,
-            ),
-            convert_options=csv.ConvertOptions(
-                column_types=dict.fromkeys(names, pa.string()),
-                include_columns=wanted,
-                strings_can_be_null=False,
-                check_utf8=False,
-            ),
-        )
-        fields = [table.column(name).combine_chunks() for name in wanted]
+        parsed = _parsed(piece, (width, delimiter), numbers)
+        if parsed is None or len(parsed[0][0]) + len(parsed[1]) != rows.size:
+            # A quote inside a field runs on over line ends: row by row none can.
+            lines = piece.decode("utf-8", "replace").split("\n")[:-1]
+            empty = pa.array([], pa.string())
+            parsed = [empty] * len(numbers), list(enumerate(lines, 1))
+        fields, odd = parsed
         if not odd:
             return Batch(rows, fields)
         return _mended(rows, fields, odd, (width, delimiter), numbers)
@@ -132,6 +111,46 @@ class TextSource:
         return "\t", _AT_ROW_ENDS.sub(b"", piece)
 
 
+def _parsed(
+    piece: bytes, shape: tuple[int, str], numbers: Sequence[int]
+) -> tuple[list[Any], list[tuple[int, str]]] | None:
+    """Return a piece's columns by Arrow's parser, and its rows of another width."""
+    import pyarrow as pa
+    from pyarrow import csv
+
+    width, delimiter = shape
+    odd: list[tuple[int, str]] = []
+
+    def put_aside(row: Any) -> str:
+        odd.append((int(row.number), str(row.text)))
+        return "skip"
+
+    names = [f"f{i}" for i in range(1, width + 1)]
+    wanted = [names[n - 1] for n in numbers]
+    try:
+        table = csv.read_csv(
+            io.BytesIO(piece),
+            read_options=csv.ReadOptions(
+                use_threads=False, column_names=names, block_size=len(piece) + 1
+            ),
+            parse_options=csv.ParseOptions(
+                delimiter=delimiter,
+                quote_char='"' if b'"' in piece else False,
+                ignore_empty_lines=False,
+                invalid_row_handler=put_aside,
+            ),
+            convert_options=csv.ConvertOptions(
+                column_types=dict.fromkeys(names, pa.string()),
+                include_columns=wanted,
+                strings_can_be_null=False,
+                check_utf8=False,
+            ),
+        )
+    except pa.ArrowInvalid:
+        return None
+    return [table.column(name).combine_chunks() for name in wanted], odd
+
+
 def pieces(file: IO[bytes], encoding: str, where: str) -> Iterator[tuple[bytes, int]]:
     """Yield whole lines as UTF-8 with plain line ends, and how many bytes of the file they took."""
     wide = encoding.startswith(("utf-16", "utf-32", "utf_16", "utf_32"))
@@ -140,7 +159,13 @@ def pieces(file: IO[bytes], encoding: str, where: str) -> Iterator[tuple[bytes, 
     first = True
     while True:
         block = file.read(PIECE_BYTES)
-        data = block if decoder is None else _encoded(decoder.decode(block, final=not block))
+        data = block
+        if decoder is not None:
+            try:
+                data = _encoded(decoder.decode(block, final=not block))
+            except UnicodeError:
+                how = "leave encoding under [log] read out, or give another"
+                raise InputError(where, f"is no text in {encoding}", how) from None
         if first and data[:3] == b"\xef\xbb\xbf":
             data = data[3:]
         first = False

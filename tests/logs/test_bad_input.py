@@ -26,8 +26,8 @@ def written(tmp_path, content, name="log.csv"):
     return path
 
 
-def used(path, roles=ROLES, units=None, **kwargs):
-    return to_channels(read_log(path), roles, units or {}, **kwargs)
+def used(path, roles=ROLES, units=None, *, reading=Reading(), **kwargs):  # noqa: B008 - frozen
+    return to_channels(read_log(path, reading=reading), roles, units or {}, **kwargs)
 
 
 FILES = {
@@ -191,6 +191,13 @@ def test_unknown_encoding_is_refused(tmp_path):
             read_log(written(tmp_path, HEAD + BODY), reading=Reading(encoding=name))
 
 
+@pytest.mark.parametrize("encoding", ["utf-16", "utf-32", "utf-16-le", "utf-7", "ascii", "cp500"])
+def test_wrong_encoding_is_refused_or_read(tmp_path, encoding):
+    path = written(tmp_path, HEAD + BODY)
+    with contextlib.suppress(InputError):
+        used(path, reading=Reading(encoding=encoding))
+
+
 @pytest.mark.parametrize("delimiter", ["", ",,", "\n", '"', "é", "\r"])
 def test_impossible_delimiter_is_refused(tmp_path, delimiter):
     with pytest.raises(InputError):
@@ -253,7 +260,7 @@ def test_mutated_log_is_read_or_refused(tmp_path, seed, cuts, again):
 
 
 @pytest.mark.slow
-@settings(max_examples=5000, **_CALM)
+@settings(max_examples=3000, **_CALM)
 @given(*_MUTATED)
 def test_thousands_of_mutated_logs_are_read_or_refused(tmp_path, seed, cuts, again):
     _read_or_refuse(tmp_path, seed, cuts, again)

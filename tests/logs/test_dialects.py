@@ -276,6 +276,16 @@ def test_stray_quote_swallows_nothing(tmp_path):
     assert found.time_s.size == N
 
 
+def test_quotes_that_run_over_a_line_end_swallow_nothing(tmp_path):
+    lines = [f'"{t:.1f}","{v:.4f}"\n' for t, v in zip(TIME, VOLTS, strict=True)]
+    lines[1], lines[3] = '"0.5",""1.5"\n"', '0".5",""1.5\n'
+    path = written(tmp_path, '"t [s]","v [V]"\n' + "".join(lines))
+    found = to_channels(read_log(path), {"time": "t", "signal": "v"}, {})
+    assert found.time_s.size >= N - 3
+    whole = found.rows > 6
+    np.testing.assert_allclose(found.time_s[whole], 0.5 * (found.rows[whole] - 2))
+
+
 def test_cut_last_row_is_missing_not_invented(tmp_path):
     found = channels(written(tmp_path, HEAD + rows() + "20.0,1."))
     assert found.time_s.size in (N, N + 1)
