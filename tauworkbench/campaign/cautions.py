@@ -59,11 +59,11 @@ def law_cautions(
     media: Sequence[Media], fit: SpeedFit, how: str, inner_free: bool
 ) -> Iterator[str]:
     """Yield what is to be said of one speed law."""
-    where = title_of(media[0])
+    where, (known, its_u) = title_of(media[0]), KNOWN_EXPONENT
     if how == "assumed":
         yield (
             f"{where}: {len(media)} speeds don't give the exponent of the speed, which is taken as "
-            f"{KNOWN_EXPONENT[0]} +- {KNOWN_EXPONENT[1]}; test at {FREE_FROM} speeds or more, spread wide"
+            f"{known} +- {its_u}; test at {FREE_FROM} speeds or more, spread wide"
         )
     if not inner_free:
         yield (
