@@ -23,10 +23,12 @@ __all__ = [
     "envelope",
     "parts_alt",
     "parts_figure",
+    "settled_s",
 ]
 
 _PIXELS = 700
 _MOST_DOTS = 400
+_MOST_READINGS = 200_000
 # Line styles beside colours: no meaning hangs on colour alone.
 _PARTS = {
     "noise and smoothness": ("measured", "-"),
@@ -117,7 +119,7 @@ def correction_figure(correction: Correction, *, style: Style = LIGHT) -> Figure
     """Draw the answer to a sudden change: the sensor alone, and with the correction behind it."""
     figure = Figure(figsize=(8.4, 2.7), dpi=100, layout="constrained", facecolor=style.background)
     axes = figure.add_subplot()
-    time, corrected = correction.step_response(_shown_s(correction))
+    time, corrected = correction.step_response(settled_s(correction))
     alone = np.asarray(step_response(correction.transfer, time), float)
     for value, colour, line, label in (
         (alone, style.measured, "--", "sensor alone"),
@@ -177,6 +179,7 @@ def _residuals(axes: Axes, ambient: Ambient, style: Style) -> str:
     return unit
 
 
-def _shown_s(correction: Correction) -> float:
-    """Until both answers are all but there [s]."""
-    return 5 * max(correction.transfer.lag_s, correction.delay_s) + 10 * correction.interval_s
+def settled_s(correction: Correction) -> float:
+    """Time by which both answers are all but there [s]; short enough to be worked out."""
+    both = 5 * max(correction.transfer.lag_s, correction.delay_s)
+    return min(both + 10 * correction.interval_s, _MOST_READINGS * correction.interval_s)

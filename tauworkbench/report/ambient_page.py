@@ -153,7 +153,7 @@ def _firmware(recovery: Recovery) -> tuple[Section, ...]:
     )
     blocks = (
         Notice("Not a protective function", f"{caution}."),
-        said.correction_table(made),
+        said.correction_table(made, figures.settled_s(made)),
         picture,
         Text("To copy; the same stands in ambient.json under correction, listings."),
         *(Code(text, f"Listing in {name}") for name, text in recovery.listings.items()),

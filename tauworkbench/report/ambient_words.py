@@ -166,11 +166,9 @@ def choice_table(ambient: Ambient) -> Table:
     )
 
 
-def correction_table(correction: Correction) -> Table:
-    """Return what a correction for firmware does."""
-    time, answers = correction.step_response(
-        5 * (correction.transfer.lag_s + correction.delay_s) + 10 * correction.interval_s
-    )
+def correction_table(correction: Correction, until_s: float) -> Table:
+    """Return what a correction for firmware does, its answer to a step looked at until then."""
+    time, answers = correction.step_response(until_s)
     rows = [
         ("Interval between readings", f"{correction.interval_s:.6g} s"),
         ("Smoothing, time constant of each low-pass pole", f"{correction.smoothing_s:.4g} s"),
@@ -180,7 +178,7 @@ def correction_table(correction: Correction) -> Table:
     ]
     for share in (0.5, 0.632, 0.9):
         reached = np.flatnonzero(answers >= share)
-        shown = f"{time[reached[0]]:.4g} s" if reached.size else "not within five lags"
+        shown = f"{time[reached[0]]:.4g} s" if reached.size else f"not within {until_s:.4g} s"
         rows.append((f"First reading at {100 * share:.3g} % of a step or more", shown))
     return Table("What the correction does", ("What", "Value"), (Group("", tuple(rows)),))
 

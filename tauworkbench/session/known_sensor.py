@@ -50,6 +50,13 @@ class Dynamics:
     cautions: tuple[str, ...] = ()
     law_relative_u: float = 0.0
 
+    @property
+    def dead_time_s(self) -> float:
+        """The sensor's dead time [s]."""
+        if self.fixed is not None:
+            return self.fixed.transfer.dead_time_s
+        return float(self.arguments["dead_time_s"])
+
 
 def sensor_of(choices: Choices, trace: Trace) -> Dynamics:
     """Return the sensor of ``[recover]``, for this trace.

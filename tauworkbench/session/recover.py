@@ -30,6 +30,7 @@ __all__ = ["Firmware", "RecoveredRun", "recover"]
 
 _KINDS = ("field", "plunge", "air-step")
 _MOST_IMPOSSIBLE = 0.01
+_MOST_DEAD = 0.25  # of the log
 
 
 @dataclass(frozen=True)
@@ -121,6 +122,7 @@ def recover(
     trace = _windowed(choices, found.need("trace"))
     with _placed(choices):
         dynamics = sensor_of(choices, trace)
+        _check_dead_time(choices, dynamics, trace)
         correction, listings = _firmware(choices, dynamics, firmware)
         from ..ambient.recover import recover_ambient
 
@@ -131,7 +133,7 @@ def recover(
             watch=watch,
             **dynamics.arguments,
         )
-    more = (*dynamics.cautions, *_law_caution(dynamics, ambient))
+    more = (*dynamics.cautions, *_law_caution(dynamics, ambient), *_short_log(ambient))
     return RecoveredRun(
         run=run_info(choices, "ambient"),
         trace=trace,
@@ -173,6 +175,18 @@ def _windowed(choices: Choices, trace: Trace) -> Trace:
     return trace
 
 
+def _check_dead_time(choices: Choices, dynamics: Dynamics, trace: Trace) -> None:
+    """Refuse a sensor whose reading shows nothing yet of most of the log's ambient."""
+    dead = dynamics.dead_time_s
+    time = trace.time_s[trace.kept]
+    span = float(time[-1] - time[0]) if time.size else 0.0
+    if time.size and dead > _MOST_DEAD * span:
+        what = f"{dead:.4g} s is more than {_MOST_DEAD:.0%} of the log's {span:.4g} s"
+        raise InputError(
+            choices.where("recover", "dead_time_s"), what, "correct it, or give a longer log"
+        )
+
+
 def _firmware(
     choices: Choices, dynamics: Dynamics, wanted: Firmware | None
 ) -> tuple[Correction | None, dict[str, str]]:
@@ -204,11 +218,22 @@ def _law_caution(dynamics: Dynamics, ambient: Ambient) -> Iterator[str]:
         )
 
 
+def _short_log(ambient: Ambient) -> Iterator[str]:
+    """Say that the log is short against the sensor."""
+    lag, span = ambient.sensor["lag_s"], float(ambient.time_s[-1] - ambient.time_s[0])
+    if lag > span:
+        yield (
+            f"the sensor's lag of {lag:.4g} s is longer than the log's {span:.4g} s: what the "
+            "sensor held when the log began is in every value; log for several times the lag"
+        )
+
+
 @contextmanager
 def _placed(choices: Choices) -> Iterator[None]:
     """Put an error that names an argument at its place in the run file."""
     places = {
         "trace": ("log", "signal"),
+        "result": ("recover", "result"),
         "time_constants_s": ("recover", "time_constants_s"),
         "zero_s": ("recover", "zero_s"),
         "dead_time_s": ("recover", "dead_time_s"),

@@ -184,6 +184,35 @@ def test_a_covariance_that_is_none_is_refused(tested, tmp_path, covariance, says
         recover(write_field(tmp_path, 'result = "bad.json"\n'))
 
 
+@pytest.mark.parametrize(
+    ("fit", "says"),
+    [
+        ({"time_constants_s": []}, "isn't the result of one fitted step"),
+        ({"time_constants_s": [{"value": -2.0}]}, "isn't the result of one fitted step"),
+        ({"lag_s": {}}, "can't be|isn't|not complete"),
+        ({"parameters": {"zero_s": {"value": -1.0}}}, "isn't the result of one fitted step"),
+    ],
+)
+def test_a_result_without_a_sensor_is_refused(tested, tmp_path, fit, says):
+    data = json.loads((tested[0] / "plunge" / "result.json").read_text())
+    data["fit"].update(fit)
+    (tmp_path / "bad.json").write_text(json.dumps(data))
+    with pytest.raises(InputError, match=says):
+        recover(write_field(tmp_path, 'result = "bad.json"\n'))
+
+
+def test_several_steps_or_another_quantity_are_refused(tested, tmp_path):
+    one = json.loads((tested[0] / "plunge" / "result.json").read_text())
+    many = {"format": "tauworkbench.results", "version": 1, "results": [one, one]}
+    heated = {**one, "run": {**one["run"], "quantity": "internal-heating"}}
+    run_file = write_field(tmp_path, 'result = "r.json"\n')
+    for data, says in ((many, "holds 2 steps"), (heated, "give the result of a plunge or an air")):
+        (tmp_path / "r.json").write_text(json.dumps(data))
+        with pytest.raises(InputError, match=says) as error:
+            recover(run_file)
+        assert error.value.where == f"{run_file} [recover] result"
+
+
 WIND = np.exp(0.6 * np.sin(np.arange(300) / 20.0)) + 0.2
 
 
@@ -254,6 +283,7 @@ def test_a_negative_speed_is_refused(tmp_path):
         (EXACT + 'campaign = "c.json"\n', "campaign: time_constants_s and campaign are both"),
         ('result = "r.json"\nzero_s = 1.0\n', "zero_s: zero_s and result are both given"),
         ("time_constants_s = [3.0, 2.0, 1.0]\n", "time_constants_s: holds 3 numbers"),
+        (EXACT + "dead_time_s = 60.0\n", "dead_time_s: 60 s is more than 25% of the log's"),
         ("time_constants_s = []\n", "time_constants_s: "),
         ("time_constants_s = [-3.0]\n", "time_constants_s: "),
         ("time_constants_s = [6.0]\ntau = 3\n", "tau: "),
@@ -284,6 +314,13 @@ def test_the_window_is_what_is_recovered(tmp_path):
     run_file.write_text(run_file.read_text().replace("[test]", "[test]\nwindow_s = [20.0, 90.0]"))
     found = recover(run_file).ambient
     assert (found.time_s[0], found.time_s[-1]) == (20.0, 90.0)
+
+
+def test_a_log_shorter_than_the_sensor_s_lag_is_said(tmp_path, recovered):
+    run_file = write_field(tmp_path, "time_constants_s = [200.0]\n")
+    words = "lag of 200 s is longer than the log's 149.5 s"
+    assert any(words in c for c in recover(run_file).cautions)
+    assert not any("is longer than the log" in c for c in recovered.cautions)
 
 
 def test_too_few_samples_are_refused_at_their_place(tmp_path):
