@@ -24,6 +24,8 @@ __all__ = ["Filtered", "Traits", "filtered", "half_step", "run"]
 
 # A stretch starts so many e-foldings of the filter's memory before it counts.
 _MEMORY, _SHORTEST = 36.0, 1000
+# Least noise, as a share of the log's range.
+_FLOOR = 1e-5
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,7 +59,9 @@ def filtered(
 ) -> tuple[Filtered, dict[str, FloatArray], Traits]:
     """Filter a prepared log; return it with the band's parts [K] and the filter's traits."""
     order = found.system.order
-    noise = found.solution.variance
+    # A log without any noise still needs some, or the filter's gain is 0 / 0.
+    floor = (_FLOOR * (float(np.ptp(p.samples.value_k)) + 1e-3)) ** 2
+    noise = max(found.solution.variance, floor)
     intensity = noise / found.solution.smoothness
 
     def again(transfer: TransferFunction, samples: Samples) -> Filtered:
@@ -71,7 +75,7 @@ def filtered(
         shift = Samples(p.samples.time_s, effect.shift_k[p.used], p.samples.weight)
         law += again(p.sensor.transfer, shift).mean ** 2
     parts = {
-        "noise and smoothness": np.sqrt(base.variance),
+        "noise and smoothness": np.sqrt(np.maximum(base.variance, 0.0)),
         "time constants": propagated(p, base.mean, lambda t, s: again(t, s).mean),
         "law": np.sqrt(law),
     }

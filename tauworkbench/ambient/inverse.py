@@ -39,6 +39,8 @@ def inverse_band(factor: FloatArray) -> FloatArray:
     padded = np.zeros((width + 1, blocks * length))
     padded[:, :n] = factor
     padded[0, n:] = 1.0
+    for d in range(1, width + 1):  # what stands beyond the matrix's end is anybody's
+        padded[d, max(n - d, 0) : n] = 0.0
     # Column c of every block lies together.
     columns = np.ascontiguousarray(padded.reshape(width + 1, blocks, length).transpose(2, 0, 1))
     below = -columns[:, 1:] / columns[:, :1]

@@ -33,8 +33,8 @@ from .system import penalised_table, penalty_band, unit_moments
 
 __all__ = ["find_jumps"]
 
-# Beyond what chance gives: to try a jump, to keep it.
-_TRY, _KEEP = 0.0, 2.0
+# Beyond what chance gives: to look for jumps at all, to try one, to keep it.
+_BEGIN, _TRY, _KEEP = 6.0, 0.0, 2.0
 
 
 def find_jumps(
@@ -107,6 +107,8 @@ def _candidates(samples: Samples, found: Smooth, cuts: Cuts) -> FloatArray:
     statistic = surprise(found)
     knots = found.system.knots
     reach = max(math.ceil(math.pi / found.omega / knots.interval_s / 2), knots.degree + 1)
+    if not cuts.count and statistic.max() < _chance(found) + _BEGIN:
+        return np.zeros(0)
     limit = max(_chance(found) + _TRY, 0.25 * float(statistic.max()))
     taken = np.zeros(knots.cells, bool)
     picked = []

@@ -70,7 +70,7 @@ class Knots:
         usual = float(np.median(np.diff(breaks)))
         uneven = np.abs(steps - usual) > 1e-6 * usual
         count = np.concatenate([[0], np.cumsum(uneven)])
-        own = count[first + 2 * degree - 1] > count[first]
+        own = count[first + 2 * degree] > count[first + 1]
         kind = np.where(own, np.cumsum(own), 0).astype(np.intp)
         members = np.flatnonzero(own)
         local = knots[first[members, None] + np.arange(1, 2 * degree + 1)[None, :]]

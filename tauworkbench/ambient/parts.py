@@ -47,6 +47,8 @@ class Refit:
 def sensor_part(refit: Refit) -> FloatArray:
     """Standard uncertainty of the ambient from the sensor's parameters [K]."""
     p = refit.prepared
+    if not p.sensor.names:
+        return np.zeros(p.target_s.size)
     posterior = Posterior(refit.found.solution)
     ambient_k = posterior.mean(posterior.ambient_table, p.target_s)
     return propagated(p, ambient_k, lambda t, s: refit.mean(t, s, p.target_s))
@@ -113,6 +115,8 @@ def law_part(prepared: Prepared, found: Smooth, effects: tuple[Effect, ...]) -> 
     """
     system = found.system
     total = np.zeros(prepared.target_s.size)
+    if not effects:
+        return total
     table = system.knots.operator(system.chain.reading_terms())
     posterior = Posterior(found.solution)
     shifted = shift(prepared.samples, prepared.chain, system.chain)

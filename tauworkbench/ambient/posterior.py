@@ -16,6 +16,9 @@ from .system import Solution
 
 __all__ = ["Posterior", "polynomials"]
 
+# Cells worked on at once, so that the memory stays a small share of the data's.
+_PIECE = 1 << 15
+
 
 def polynomials(knots: Knots, table: FloatArray, beta: FloatArray) -> FloatArray:
     """Polynomial in ``u`` of each cell, shape (degree + 1, cells)."""
@@ -77,15 +80,17 @@ class Posterior:
         pairs = [(i, j) for i in range(size) for j in range(i, size)]
         twice = np.array([1.0 if i == j else 2.0 for i, j in pairs])
         products = [np.convolve(table[0, i], table[0, j]) for i, j in pairs]
-        parts = np.empty((len(pairs), knots.cells))
-        for k, (i, j) in enumerate(pairs):
-            parts[k] = self.inverse[j - i, knots.alive(i)]
-        out = np.asarray((twice[:, None] * np.array(products)).T @ parts)
+        mixing = (twice[:, None] * np.array(products)).T
+        out = np.empty((mixing.shape[0], knots.cells))
+        for low in range(0, knots.cells, _PIECE):
+            first = knots.first[low : low + _PIECE]
+            parts = np.array([self.inverse[j - i, first + i] for i, j in pairs])
+            out[:, low : low + _PIECE] = mixing @ parts
         own = np.flatnonzero(knots.kind)
         out[:, own] = 0.0
         for k, (i, j) in enumerate(pairs):
             a, b = table[knots.kind[own], i], table[knots.kind[own], j]
-            out[:, own] += twice[k] * parts[k, own] * _products(a, b).T
+            out[:, own] += twice[k] * self.inverse[j - i, knots.first[own] + i] * _products(a, b).T
         return out
 
     def lost_variance(self) -> float:

@@ -228,7 +228,7 @@ def _back(p: Prepared, clock_s: FloatArray) -> FloatArray:
 
 def _checked(p: Prepared, found: Smooth, residual: FloatArray, causal: bool) -> Check:
     """Say how white the residuals are, against what a smoother leaves of white noise."""
-    informs = p.samples.weight > 0
+    informs = slice(None) if p.informs.all() else p.informs
     time = p.samples.time_s[informs]
     lags = min(10, time.size // 4)
     expected = np.zeros(lags)
