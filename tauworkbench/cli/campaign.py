@@ -34,6 +34,11 @@ def arguments(parser: argparse.ArgumentParser) -> None:
         default="point",
         help="decimal sign of the tables; with a comma they are separated by semicolons",
     )
+    parser.add_argument(
+        "--cluster",
+        metavar="ADDRESS",
+        help="fit on the Dask cluster whose scheduler is there, such as tcp://host:8786",
+    )
     add_quiet(parser)
 
 
@@ -46,7 +51,11 @@ def run(args: argparse.Namespace) -> int:
     check_folder(folder)
     with progress(args.quiet) as watch:
         found = campaign(
-            args.campaign_file, watch=watch, refit=args.refit, processes=max(args.processes, 0)
+            args.campaign_file,
+            watch=watch,
+            refit=args.refit,
+            processes=max(args.processes, 0),
+            cluster=args.cluster,
         )
         watch.report(0, 0, "writing the tables and the report")
         found.save(folder, decimal=args.decimal)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 import time
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
@@ -58,7 +58,12 @@ class CampaignResult(Campaign):
 
 
 def campaign(
-    path: str | os.PathLike[str], *, watch: Watch = SILENT, refit: bool = False, processes: int = 0
+    path: str | os.PathLike[str],
+    *,
+    watch: Watch = SILENT,
+    refit: bool = False,
+    processes: int = 0,
+    cluster: str | None = None,
 ) -> CampaignResult:
     """Fit every run of a campaign; what ``tauworkbench campaign`` does.
 
@@ -73,6 +78,8 @@ def campaign(
         with the same log, choices and version.
     processes : int
         At most so many; 0 for one per core.
+    cluster : str, optional
+        The scheduler of a Dask cluster that fits them instead, such as ``tcp://host:8786``.
 
     Returns
     -------
@@ -85,7 +92,16 @@ def campaign(
         Where the campaign file can't be used, or finds no run.
     """
     file = read_campaign(path)
-    outcomes = _fit(file.runs, watch, refit, processes)
+    paths = [f.path for f in file.runs]
+    folder = cache_folder()
+    if cluster is None:
+        each = fit_each(paths, folder, refit=refit, processes=processes)
+    else:
+        from .cluster import fit_on_cluster
+
+        each = fit_on_cluster(cluster, paths, folder, refit=refit)
+    outcomes = _gathered(each, file.runs, watch)
+    Cache(folder).prune()
     runs = tuple(_run(f.run, outcome) for f, outcome in zip(file.runs, outcomes, strict=True))
     analysis = analyse(runs, file.settings)
     return CampaignResult(
@@ -98,19 +114,19 @@ def campaign(
     )
 
 
-def _fit(files: Sequence[RunFile], watch: Watch, refit: bool, processes: int) -> list[Outcome]:
-    folder = cache_folder()
+def _gathered(
+    each: Iterator[tuple[int, Outcome | None]], files: Sequence[RunFile], watch: Watch
+) -> list[Outcome]:
+    """All outcomes in the runs' order, with the progress shown."""
     found: dict[int, Outcome] = {}
     start = time.monotonic()
     step(watch, 0, len(files), f"fitting {files[0].run}")
-    each = fit_each([f.path for f in files], folder, refit=refit, processes=processes)
     for i, outcome in each:
         if outcome is not None:
             found[i] = outcome
         spent = time.monotonic() - start
         words = f"{len(found)} of {len(files)} runs, {_left(spent, len(found), len(files))}"
         step(watch, len(found), len(files), words)
-    Cache(folder).prune()
     return [found[i] for i in range(len(files))]
 
 
