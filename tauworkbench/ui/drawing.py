@@ -8,20 +8,20 @@ from __future__ import annotations
 import io
 from dataclasses import dataclass
 from statistics import NormalDist
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.ticker import MaxNLocator
 
 from ..estimate.record import Estimate
 from ..records import FloatArray
 from ..report.decimation import decimate
+from ..report.figures import dress
 from ..report.style import DARK, LIGHT, Style
 from .screen import PlotShown
 
-__all__ = ["Picture", "draw"]
+__all__ = ["Drawer", "Picture"]
 
 _LEFT, _RIGHT, _TOP, _BOTTOM, _GAP = 66, 14, 30, 42, 14  # pixels around the two panels
 _RESIDUAL_SHARE = 0.26
@@ -45,38 +45,62 @@ class Picture:
     alt: str = ""
 
 
-def draw(plot: PlotShown) -> Picture:
-    """Draw a picture."""
+class Drawer:
+    """Draws pictures one after the other; the axes stay, since making their ticks costs most."""
+
+    def __init__(self) -> None:
+        self._for: tuple[object, ...] = ()
+        self._figure = Figure()
+        self._axes: list[Axes] = []
+
+    def draw(self, plot: PlotShown) -> Picture:
+        """Draw a picture."""
+        style = DARK if plot.dark else LIGHT
+        wanted = (plot.width, plot.height, plot.ratio, style)
+        if wanted != self._for:
+            self._make(plot, style)
+            self._for = wanted
+        for axes in self._axes:
+            for artist in (*axes.lines, *axes.collections, *axes.texts):
+                artist.remove()
+        upper, lower = self._axes
+        _draw_upper(upper, plot, style)
+        _draw_lower(lower, plot, style)
+        upper.set_xlim(plot.low_s, plot.high_s)
+        upper.set_ylabel(plot.curve.label)
+        upper.legend(
+            loc="lower left", bbox_to_anchor=(-0.005, 1.0), ncols=5, fontsize=8.5, frameon=False,
+            labelcolor=style.text, borderaxespad=0.2, handlelength=1.8, columnspacing=1.4,
+        )  # fmt: skip
+        buffer = io.BytesIO()
+        self._figure.savefig(buffer, format="png", pil_kwargs={"compress_level": 1})
+        size, limits = (plot.width, plot.height), (plot.low_s, plot.high_s)
+        return Picture(buffer.getvalue(), size, _box(plot), limits, plot.alt)
+
+    def _make(self, plot: PlotShown, style: Style) -> None:
+        width, height = plot.width, plot.height
+        self._figure = figure = Figure(
+            figsize=(width / 100, height / 100), dpi=100 * plot.ratio, facecolor=style.background
+        )
+        inner = height - _TOP - _BOTTOM - _GAP
+        low = _RESIDUAL_SHARE * inner
+        left, _, right, _ = _box(plot)
+        across = right - left
+        upper = figure.add_axes(
+            (left, (_BOTTOM + low + _GAP) / height, across, (inner - low) / height)
+        )
+        lower = figure.add_axes((left, _BOTTOM / height, across, low / height), sharex=upper)
+        for axes, ticks in ((upper, 6), (lower, 3)):
+            _dress(axes, style, (max(4, width // 130), ticks))
+            axes.yaxis.set_label_coords(-(_LEFT - 14) / (across * width), 0.5)
+        upper.tick_params(labelbottom=False)
+        lower.set_xlabel("log time / s", labelpad=3)
+        self._axes = [upper, lower]
+
+
+def _box(plot: PlotShown) -> tuple[float, float, float, float]:
     width, height = plot.width, plot.height
-    style = DARK if plot.dark else LIGHT
-    figure = Figure(
-        figsize=(width / 100, height / 100), dpi=100 * plot.ratio, facecolor=style.background
-    )
-    inner = height - _TOP - _BOTTOM - _GAP
-    low = _RESIDUAL_SHARE * inner
-    box = (_LEFT / width, _TOP / height, 1 - _RIGHT / width, 1 - _BOTTOM / height)
-    across = (box[0], box[2] - box[0])
-    upper = figure.add_axes(
-        (across[0], (_BOTTOM + low + _GAP) / height, across[1], (inner - low) / height)
-    )
-    lower = figure.add_axes((across[0], _BOTTOM / height, across[1], low / height), sharex=upper)
-    _draw_upper(upper, plot, style)
-    _draw_lower(lower, plot, style)
-    for axes in (upper, lower):
-        _dress(axes, style, (width // 130, 6 if axes is upper else 3))
-    upper.set_xlim(plot.low_s, plot.high_s)
-    upper.tick_params(labelbottom=False)
-    upper.set_ylabel(plot.curve.label)
-    lower.set_xlabel("log time / s", labelpad=3)
-    for axes in (upper, lower):
-        axes.yaxis.set_label_coords(-(_LEFT - 14) / (across[1] * width), 0.5)
-    upper.legend(
-        loc="lower left", bbox_to_anchor=(-0.005, 1.0), ncols=5, fontsize=8.5, frameon=False,
-        labelcolor=style.text, borderaxespad=0.2, handlelength=1.8, columnspacing=1.4,
-    )  # fmt: skip
-    buffer = io.BytesIO()
-    figure.savefig(buffer, format="png", pil_kwargs={"compress_level": 1})
-    return Picture(buffer.getvalue(), (width, height), box, (plot.low_s, plot.high_s), plot.alt)
+    return _LEFT / width, _TOP / height, 1 - _RIGHT / width, 1 - _BOTTOM / height
 
 
 def _draw_upper(axes: Axes, plot: PlotShown, style: Style) -> None:
@@ -112,9 +136,9 @@ def _draw_upper(axes: Axes, plot: PlotShown, style: Style) -> None:
 def _draw_lower(axes: Axes, plot: PlotShown, style: Style) -> None:
     curve, estimate = plot.curve, plot.estimate
     axes.axhline(0, color=style.fit if estimate else style.quiet, lw=1.1, zorder=4)
+    axes.tick_params(axis="y", left=estimate is not None, labelleft=estimate is not None)
     if estimate is None:
         axes.set_ylim(-1, 1)
-        axes.set_yticks([])
         axes.set_ylabel("residual")
         axes.text(
             0.5, 0.72, "the residuals stand here once there is a fit", color=style.quiet,
@@ -142,7 +166,7 @@ def _draw_samples(
 ) -> None:
     time = plot.curve.time_s[inside]
     shown = value[inside]
-    drawn: dict[str, Any] = {"lw": 1.0, "solid_joinstyle": "round"}
+    drawn: dict[str, Any] = {"lw": 1.0, "solid_joinstyle": "bevel"}
     if time.size <= _DOTS:
         drawn = {"ls": "", "marker": "o", "ms": 4.2, "mew": 0}
     time, shown = decimate(time, shown, plot.width)
@@ -184,16 +208,10 @@ def _set_limits(axes: Axes, values: FloatArray) -> None:
 
 
 def _dress(axes: Axes, style: Style, ticks: tuple[int, int]) -> None:
-    axes.set_facecolor(style.background)
-    axes.grid(color=style.grid, lw=0.7)
-    axes.set_axisbelow(True)
-    axes.spines[["top", "right"]].set_visible(False)
-    axes.spines[["left", "bottom"]].set_color(style.quiet)
-    axes.tick_params(colors=style.text, labelsize=9)
-    axes.xaxis.set_major_locator(MaxNLocator(max(4, ticks[0]), steps=[1, 2, 2.5, 5, 10]))
-    if axes.get_yticks().size:
-        axes.yaxis.set_major_locator(MaxNLocator(ticks[1], steps=[1, 2, 2.5, 5, 10]))
-    axes.ticklabel_format(useOffset=False)
-    for label in (axes.xaxis.label, axes.yaxis.label):
-        label.set_color(style.text)
-        label.set_fontsize(9.5)
+    """Dress as the report's figures are, with the ticks that the page has room for."""
+    dress(axes, style)
+    axes.tick_params(labelsize=9)
+    names: tuple[Literal["x", "y"], ...] = ("x", "y")
+    for axis, name, count in zip((axes.xaxis, axes.yaxis), names, ticks, strict=True):
+        axes.locator_params(axis=name, nbins=count)
+        axis.label.set_fontsize(9.5)

@@ -11,7 +11,7 @@ import pytest
 from matplotlib.image import imread
 
 from tauworkbench.report.style import DARK, LIGHT
-from tauworkbench.ui.drawing import draw
+from tauworkbench.ui.drawing import Drawer
 from tauworkbench.ui.screen import Curve, PlotShown
 
 
@@ -21,6 +21,10 @@ def plot(count=2000, high_s=100.0, value=None, **more):
     nothing = np.empty(0)
     curve = Curve(at, value, "temperature / °C", nothing, nothing)
     return PlotShown(curve, 0.0, high_s, **more)
+
+
+def draw(shown):
+    return Drawer().draw(shown)
 
 
 def pixels(picture):
@@ -78,6 +82,15 @@ def test_view_with_one_sample_and_with_none():
         assert draw(replace(plot(3), curve=curve, low_s=low, high_s=high)).png
 
 
+@pytest.mark.parametrize("dark", [False, True])
+def test_nothing_of_an_earlier_picture_stays(dark):
+    drawer = Drawer()
+    wanted = plot(500, dark=dark)
+    drawer.draw(plot(300, value=np.full(300, 7.0), high_s=40.0))
+    drawer.draw(plot(300, value=np.full(300, 7.0), high_s=40.0, dark=dark))
+    assert drawer.draw(wanted).png == draw(wanted).png
+
+
 def test_set_aside_samples_are_crosses():
     at = np.linspace(0, 100, 500)
     curve = Curve(at, np.sin(at / 10), "temperature / °C", np.array([50.0]), np.array([np.nan]))
@@ -86,12 +99,18 @@ def test_set_aside_samples_are_crosses():
 
 
 @pytest.mark.slow
-def test_million_samples_follow_the_hand():
-    shown = plot(1_000_000, value=np.random.default_rng(1).normal(size=1_000_000))
-    draw(shown)
-    took = []
-    for k in range(9):
-        start = time.perf_counter()
-        draw(replace(shown, low_s=0.0 + k, high_s=90.0 + k))
-        took.append(time.perf_counter() - start)
-    assert np.median(took) < 0.15
+def test_million_samples_cost_little_more_than_two_thousand():
+    """Said as a ratio, since the seconds depend on who else uses the machine."""
+    noise = np.random.default_rng(1)
+
+    def took(count):
+        drawer, shown = Drawer(), plot(count, value=noise.normal(size=count))
+        drawer.draw(shown)
+        each = []
+        for k in range(9):
+            start = time.process_time()
+            drawer.draw(replace(shown, low_s=0.0 + k, high_s=90.0 + k))
+            each.append(time.process_time() - start)
+        return np.median(each)
+
+    assert took(1_000_000) < 2 * took(2_001)

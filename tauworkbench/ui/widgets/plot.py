@@ -7,7 +7,7 @@ from typing import Any
 
 import ipywidgets as w
 
-from ..drawing import draw
+from ..drawing import Drawer
 from ..screen import Marker, PlotShown
 from .controls import html
 from .guard import Guard
@@ -39,7 +39,7 @@ class Plot:
 
     def __init__(self, report: Callable[[str, Any], None], guard: Guard, plain: bool) -> None:
         self._report = report
-        self._asked = 0
+        self._drawer = Drawer()
         self.pane: Any = None
         if plain:
             self._image = w.Image(format="png", width=1000, height=460)
@@ -57,7 +57,7 @@ class Plot:
         self.widget.layout.display = "none" if plot is None else ""
         if plot is None:
             return
-        picture = draw(plot)
+        picture = self._drawer.draw(plot)
         if self.pane is not None:
             self.pane.show(picture)
         else:
