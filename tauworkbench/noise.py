@@ -39,6 +39,8 @@ _FITS = 2.33  # standard deviations: a chance of 0.01
 _WORTH = 1.25  # a ratio of largest to smallest noise below this isn't worth weights
 _SAME_EXCITATION = math.log(1.1)
 _ONE_LEVEL = 24  # samples
+_ROUNDED = 0.05  # share of residuals that are nothing but a double's rounding
+_ROUNDING = 1e-14
 
 
 def sample_noise(
@@ -120,7 +122,7 @@ def resolution(signal: ArrayLike) -> float | None:
         return None
     levels = np.unique(y)
     if not 2 <= levels.size <= y.size / 2:
-        return None
+        return _printed(levels)
     gaps = np.diff(levels)
     gaps = gaps[gaps > 1e-9 * np.max(np.abs(levels))]  # the same value, printed from other sums
     if not gaps.size:
@@ -136,6 +138,26 @@ def resolution(signal: ArrayLike) -> float | None:
     return step if np.mean(near) >= 0.9 else None
 
 
+def _printed(levels: FloatArray) -> float | None:
+    """Largest power of ten of which all values are multiples, as printed decimals are.
+
+    A steep step passes each code but once, so that repeats can't be waited for.
+    """
+    if levels.size < 2:
+        return None
+    largest, span = float(np.max(np.abs(levels))), float(np.ptp(levels))
+    for power in range(3, -10, -1):
+        step = 10.0**power
+        if step > span:
+            continue
+        if largest / step > 1e9:  # the digits of a double end
+            return None
+        off = np.abs(levels / step - np.round(levels / step))
+        if float(off.max()) < 1e-5:
+            return step
+    return None
+
+
 def _by_level(
     time: FloatArray, y: FloatArray, starts: IndexArray, at: FloatArray, quantum: float | None
 ) -> FloatArray:
@@ -148,8 +170,9 @@ def _by_level(
     low = float(level.min())
     logarithmic = low > 0 and float(level.max()) > _WIDE * low
     found = _levels(np.log(level) if logarithmic else level, residual)
-    if found is None:
-        return one
+    still = np.abs(residual) <= _ROUNDING * np.max(np.abs(level))
+    if found is None or np.mean(still) > _ROUNDED:
+        return one  # a level that stands still is rounded, not free of noise
     centres, scales, counts = found
     if np.any(scales <= 0):
         return one

@@ -19,6 +19,7 @@ __all__ = ["ResistanceLaw", "to_temperature"]
 RowNumbers = NDArray[np.int64]
 
 _MOST_IMPOSSIBLE = 0.01
+_PLAUSIBLE_C = (-200.0, 850.0)  # the range of IEC 60751
 _FEWEST_CHANGES = 12  # fewer tell nothing
 _HELD_SHARE = 1 / 3  # of the samples after a change
 _NO_READER = Reader()
@@ -138,6 +139,7 @@ def to_temperature(  # noqa: PLR0913 - a log, what it was logged with, and what 
                 _Record(time, y, circuit.signal_unit, _rows(rows, y.size)), got, celsius, held
             ),
             *_out_of_range(celsius, applied.valid_c),
+            *_implausible(celsius),
         ),
     )
 
@@ -264,6 +266,19 @@ def _set_aside(record: _Record, got: Readings, celsius: FloatArray, held: BoolAr
         words = "they only repeat the one before: the reader measures more slowly than it is logged"
         out.append(record.set_aside(copies, words))
     return out
+
+
+def _implausible(celsius: FloatArray) -> list[str]:
+    """Name temperatures that no thermistor or platinum thermometer is made for."""
+    known = celsius[np.isfinite(celsius)]
+    low, high = _PLAUSIBLE_C
+    if not known.size or (known.min() >= low and known.max() <= high):
+        return []
+    words = (
+        f"the temperatures go from {known.min():.4g} to {known.max():.4g} degC, and no usual "
+        f"sensor leaves {low:g} to {high:g} degC: check the signal's unit, the circuit and the law"
+    )
+    return [words]
 
 
 def _out_of_range(celsius: FloatArray, valid_c: tuple[float, float] | None) -> list[str]:

@@ -232,3 +232,22 @@ def test_a_million_samples_cost_no_more_than_a_few_medians():
         np.median(signal)
         median = min(median, time.perf_counter() - begin)
     assert ours < 10 * median
+
+
+@pytest.mark.parametrize("decimals", [1, 2, 3])
+def test_a_steep_step_printed_to_few_decimals_shows_its_step(decimals):
+    """Each code but once on the way up, and a baseline that stands still."""
+    time = np.arange(0, 60, 0.2)
+    exact = 20 + 40 * (1 - np.exp(-np.maximum(time - 15.03, 0) / 5))
+    printed = np.round(exact, decimals)
+    assert resolution(printed) == pytest.approx(10.0**-decimals)
+    noise = sample_noise(time, printed, quantum=resolution(printed))
+    assert np.ptp(noise) == 0
+    assert noise[0] >= 10.0**-decimals / np.sqrt(12) * 0.999
+
+
+def test_a_level_that_stands_still_is_not_free_of_noise():
+    time = np.arange(0, 60, 0.2)
+    value = 20 + 40 * (1 - np.exp(-np.maximum(time - 15.03, 0) / 5))
+    noisy = value + np.where(time > 15, np.random.default_rng(1).normal(0, 0.01, time.size), 0)
+    assert np.ptp(sample_noise(time, noisy)) == 0

@@ -23,6 +23,7 @@ from .base import KELVIN, Law, increasing_root, refuse
 
 __all__ = ["Beta", "FourTerm", "SteinhartHart", "ThreeParameter"]
 
+_LEAST_OHM, _MOST_OHM, _MOST_BETA_K, _A_LEAST = 1e-3, 1e12, 1e5, 1e-20
 # ln R from a milliohm to a teraohm: no thermistor lies outside
 _LN_LOW, _LN_HIGH = float(np.log(1e-3)), float(np.log(1e12))
 
@@ -69,8 +70,14 @@ class Beta(Law):
         """Refuse what makes no thermistor."""
         if self.resistance <= 0:
             raise refuse("resistance", f"{self.resistance:g} ohm is not positive", "give ohms > 0")
+        if not _LEAST_OHM <= self.resistance <= _MOST_OHM:
+            raise refuse("resistance", f"{self.resistance:g} ohm is no thermistor's", "give ohms")
         if self.beta_k <= 0:
             raise refuse("beta_k", f"{self.beta_k:g} K is not positive", "give about 3000 to 4500")
+        if self.beta_k > _MOST_BETA_K:
+            raise refuse(
+                "beta_k", f"{self.beta_k:g} K is no thermistor's", "give about 3000 to 4500"
+            )
         if self.temperature_c <= -KELVIN:
             raise refuse("temperature_c", f"{self.temperature_c:g} degC can't be", "give degC")
         for name in ("resistance_rel_u", "beta_rel_u"):
@@ -227,6 +234,8 @@ class ThreeParameter(Law):
         """Refuse what makes no thermistor."""
         if self.a <= 0:
             raise refuse("a", f"{self.a:g} ohm is not positive", "give ohms > 0")
+        if not (_A_LEAST < self.a < _MOST_OHM and self.b < _MOST_BETA_K and abs(self.c) < 1e4):
+            raise refuse("a", "a, b and c together are no thermistor's", "give ohm, K and K")
         if self.b <= 0:
             raise refuse("b", f"{self.b:g} K is not positive", "give kelvins > 0")
 

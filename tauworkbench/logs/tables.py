@@ -24,7 +24,7 @@ __all__ = ["ParquetSource", "read_parquet", "workbook_as_text"]
 
 LARGEST_UNPACKED = 1_000_000_000
 _MOST_PACKED = 2000  # times; a workbook's XML packs about 10 to 30 to one
-_MOST_CELLS = 30_000_000
+_MOST_CELLS = 5_000_000
 _ROWS_AT_ONCE = 1 << 18
 
 

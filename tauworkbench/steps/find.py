@@ -73,7 +73,8 @@ def find_steps(
         Fewer than 8 usable samples, or no step above the noise.
     """
     record = _record(trace, window_s)
-    window = window_s or record.ends_s
+    # the whole log, also where its first samples were set aside: their share must be seen
+    window = window_s or (float(trace.time_s[0]), float(trace.time_s[-1]))
     if onset == "before":
         return (_whole(record, window, 1, before=True),)
     if onset is not None:
