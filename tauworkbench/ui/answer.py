@@ -14,6 +14,7 @@ from ..report.wording import best
 from ..result import Result
 from ..session.choices import Choices
 from ..session.stages import Resolved
+from .candidates import tried_in
 from .picture import step_of
 from .screen import ResultShown
 
@@ -22,11 +23,15 @@ __all__ = ["Answer", "answer_of", "report_of", "result_shown", "table_html"]
 
 @dataclass(frozen=True, eq=False)
 class Answer:
-    """The last answer, kept on the page until a newer one is there."""
+    """The last answer, kept on the page until a newer one is there.
+
+    ``tried`` names the models that were tried on this record.
+    """
 
     trace: Trace
     estimate: Estimate
     shown: ResultShown
+    tried: tuple[str, ...] = ()
 
 
 def answer_of(found: Resolved, choices: Choices, old: Answer | None) -> Answer | None:
@@ -40,7 +45,9 @@ def answer_of(found: Resolved, choices: Choices, old: Answer | None) -> Answer |
     estimate = next((e for e in estimates if e.step.number == number), estimates[0])
     if old is not None and old.estimate is estimate and old.trace is result.trace:
         return old
-    return Answer(result.trace, estimate, result_shown(result, estimate))
+    before = old.tried if old is not None and old.trace is result.trace else ()
+    tried = tried_in(estimate, before)
+    return Answer(result.trace, estimate, result_shown(result, estimate), tried)
 
 
 def result_shown(result: Result, estimate: Estimate) -> ResultShown:

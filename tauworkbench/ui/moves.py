@@ -12,6 +12,7 @@ from ..errors import InputError
 from ..session.choices import Choices, keys_taken
 from ..session.stages import Resolved
 from ..session.toml_file import is_plain_file
+from .candidates import choices_of
 from .fields import Typed, chosen, set_choice
 from .picture import curve_of, full_of, markers_of, step_of
 from .text import NotANumberError, number_of
@@ -102,6 +103,8 @@ def looked(state: State, head: str, part: str, value: Any, found: Resolved) -> S
 
 def _set(state: State, found: Resolved, name: str, text: str, typed: dict[str, Typed]) -> Choices:
     choices = state.choices
+    if name == "model":
+        return choices.but("model", **choices_of(text))
     if name == "onset":
         if text.strip() in ("", "before"):
             return choices.but("test", onset_s=text.strip() or None)

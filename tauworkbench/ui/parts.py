@@ -81,9 +81,9 @@ PARTS: tuple[Part, ...] = (
     ),
     Part(
         "fit", "Fit", ("estimates",), "waits for a step", _fixed(
-            ("test.kind", "model.order"),
-            ("model.zero", "model.dead_time", "model.drift", "model.input", "model.noise",
-             "model.coverage"),
+            ("test.kind", "model"),
+            ("model.order", "model.zero", "model.dead_time", "model.drift", "model.input",
+             "model.noise", "model.coverage"),
         ),
     ),
     Part(

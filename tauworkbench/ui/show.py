@@ -15,6 +15,7 @@ from ..session.choices import Choices
 from ..session.stages import Resolved
 from . import words
 from .answer import Answer, report_of
+from .candidates import model_field
 from .code import code_of
 from .fields import Typed, field_shown, missing_words
 from .parts import PARTS, Part
@@ -172,7 +173,10 @@ def _fields(part: Part, state: State, found: Resolved) -> tuple[FieldShown, ...]
     out = []
     for name, more in part.fields(state.choices):
         problem = against.get(name, "")
-        if name in words.STEP_FIELDS:
+        if name == "model":
+            tried = () if state.answer is None else state.answer.tried
+            shown = model_field(state.choices.model, tried)
+        elif name in words.STEP_FIELDS:
             shown = words.step_field(name, state, found)
             shown = shown if shown.problem else replace(shown, problem=problem)
         else:

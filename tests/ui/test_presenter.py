@@ -524,3 +524,19 @@ def test_state_folder_that_cannot_be_written_is_said(bench, run_file, own_state)
     one.do("onset", "2.5")
     assert "can't be kept between sessions" in one.status.words
     assert one.choices.test.onset_s == 2.5
+
+
+def test_models_that_were_tried_are_looked_at_one_by_one(bench, run_file):
+    one = bench(run_file)
+    chosen = one.presenter.found.get("result").fit.model
+    assert one.field("model").value == ""
+    names = [name for name, _ in one.field("model").options]
+    assert {"one-pole", "two-pole"} <= set(names)
+    for name in names:
+        one.do("model", name)
+        assert one.presenter.found.get("result").fit.model == name
+        assert one.field("model").value == name
+        assert [n for n, _ in one.field("model").options] == names
+    one.do("model", "")
+    assert one.presenter.found.get("result").fit.model == chosen
+    assert one.choices.model.order == "auto"
