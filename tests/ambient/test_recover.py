@@ -51,10 +51,10 @@ def test_slow_sine_behind_two_capacities_comes_back_whole() -> None:
     assert np.ptp(result.ambient_c[middle]) / 2 == pytest.approx(20, abs=0.1)
 
 
-@pytest.mark.parametrize("kind", ["ramps and sines", "random walk", "jumps", "doors"])
+@pytest.mark.parametrize("kind", ["ramps and sines", "random walk", "jumps"])
 def test_one_log_of_each_kind_is_recovered_within_its_band(kind: str) -> None:
     # One seed each, as a smoke test; the statistics are in tests/validation.
-    log = scene(kind, 7, (10.0, 2.0), samples=1600)
+    log = scene(kind, 7, (10.0, 2.0), samples=1000)
     result = recover_ambient(Trace(log.time_s, log.reading_c), time_constants_s=[10.0, 2.0])
     inside = (log.ambient_c >= result.low_c) & (log.ambient_c <= result.high_c)
     assert inside.mean() > 0.9

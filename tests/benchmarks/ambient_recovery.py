@@ -4,6 +4,7 @@
 on one core; CPU time, the median of three. The library is given order, smoothness and noise; we
 find them, and choose the order, too.
 """
+# ruff: noqa: E402, T201 - threads are limited first; a script prints its tables
 
 from __future__ import annotations
 

@@ -1,4 +1,8 @@
-"""Measure the recovery on simulated field logs and write ambient.md."""
+"""Measure the recovery on simulated field logs: the tables of ambient.md.
+
+``PYTHONPATH=tests python -m validation.ambient_table 20`` from the project's root prints them.
+"""
+# ruff: noqa: T201 - a script that prints its tables
 
 from __future__ import annotations
 
@@ -6,22 +10,18 @@ import sys
 import time
 from collections.abc import Iterable
 from dataclasses import dataclass
-from pathlib import Path
 
 import numpy as np
+from ambient.scenes import Scene, scene
 
-sys.path.insert(0, str(Path(__file__).resolve().parents[1]))
-
-from ambient.scenes import Scene, scene  # noqa: E402
-
-from tauworkbench.ambient.chain import Chain  # noqa: E402
-from tauworkbench.ambient.moments import Samples  # noqa: E402
-from tauworkbench.ambient.posterior import Posterior  # noqa: E402
-from tauworkbench.ambient.recover import recover_ambient  # noqa: E402
-from tauworkbench.ambient.sensor import KnownSensor  # noqa: E402
-from tauworkbench.ambient.smooth import smooth  # noqa: E402
-from tauworkbench.records import Trace  # noqa: E402
-from tauworkbench.thermal.transfer import TransferFunction  # noqa: E402
+from tauworkbench.ambient.chain import Chain
+from tauworkbench.ambient.moments import Samples
+from tauworkbench.ambient.posterior import Posterior
+from tauworkbench.ambient.recover import recover_ambient
+from tauworkbench.ambient.sensor import KnownSensor
+from tauworkbench.ambient.smooth import smooth
+from tauworkbench.records import Trace
+from tauworkbench.thermal.transfer import TransferFunction
 
 SENSORS: list[tuple[float, ...]] = [(10.0,), (10.0, 2.0)]
 
@@ -81,7 +81,7 @@ def tuned(log: Scene, sensor: tuple[float, ...]) -> float:
 def measure(
     kind: str, sensor: tuple[float, ...], seeds: Iterable[int], samples: int = 3000, u: float = 0.0
 ) -> Row:
-    """Recover seeded logs; with u the time constants are off by that share at random, and said so."""
+    """Recover seeded logs; with u the time constants are off by that share, and said so."""
     sums, orders = [], []
     for seed in seeds:
         log = scene(kind, seed, sensor, samples=samples)
@@ -118,9 +118,11 @@ def _known(sensor: tuple[float, ...], u: float, seed: int) -> KnownSensor:
     return KnownSensor(TransferFunction(said), names, np.diag(spread**2) if u else np.zeros((0, 0)))
 
 
-HEAD = """| ambient | sensor [s] | rms [K] | tuned | ratio | reading | in the band | near jumps | order 1/2/3 | jumps found / true | CPU [s] |
-| --- | --- | --- | --- | --- | --- | --- | --- | --- | --- | --- |
-"""
+COLUMNS = (
+    "ambient", "sensor [s]", "rms [K]", "tuned", "ratio", "reading", "in the band", "near jumps",
+    "order 1/2/3", "jumps found / true", "CPU [s]",
+)  # fmt: skip
+HEAD = f"| {' | '.join(COLUMNS)} |\n|{' --- |' * len(COLUMNS)}\n"
 
 
 def table(count: int, u: float = 0.0) -> str:
@@ -132,8 +134,8 @@ def table(count: int, u: float = 0.0) -> str:
             near = "" if np.isnan(r.near) else f"{r.near:.1f} %"
             lines.append(
                 f"| {kind} | {', '.join(f'{t:g}' for t in sensor)} | {r.rms_k:.4f} | "
-                f"{r.tuned_k:.4f} | {r.ratio:.2f} | {r.reading_k:.2f} | {r.coverage:.1f} % | {near} "
-                f"| {r.orders} | {r.found:.1f} / {r.true:.1f} | {r.seconds:.2f} |\n"
+                f"{r.tuned_k:.4f} | {r.ratio:.2f} | {r.reading_k:.2f} | {r.coverage:.1f} % | "
+                f"{near} | {r.orders} | {r.found:.1f} / {r.true:.1f} | {r.seconds:.2f} |\n"
             )
             print(lines[-1], end="", flush=True)
     return "".join(lines)
