@@ -30,10 +30,6 @@ def main() -> None:
         page = open_page(context, served)
         wait_for_plot(page)
         page.wait_for_selector(".tau-answer-fresh .tau-headline")
-        page.wait_for_function(
-            "document.querySelector('.tau-plot-picture').offsetWidth"
-            " === document.querySelector('.tau-plot').offsetWidth"
-        )
         page.wait_for_timeout(500)
         page.screenshot(path=HERE / "bench.png")
         browser.close()

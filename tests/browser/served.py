@@ -115,8 +115,12 @@ def open_page(context: Any, served: Served) -> Any:
 
 
 def wait_for_plot(page: Any) -> None:
-    """Wait until the picture is drawn."""
-    page.wait_for_selector(".tau-plot[data-frame]", timeout=60_000)
+    """Wait until the picture is drawn, as wide as its place."""
+    page.wait_for_selector(".tau-plot[data-frame]", timeout=90_000)
+    page.wait_for_function(
+        "document.querySelector('.tau-plot-picture').offsetWidth"
+        " === document.querySelector('.tau-plot').offsetWidth"
+    )
 
 
 def run_cell(page: Any, until: str = ".tau-bench", times: int = 6) -> None:

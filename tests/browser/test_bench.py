@@ -13,7 +13,7 @@ import pytest
 from tauworkbench.session import shipped
 
 from .conftest import SAMPLE
-from .served import drag, run_cell
+from .served import drag, open_page, run_cell, wait_for_plot
 
 pytestmark = pytest.mark.browser
 DOORS = ["page", "lab"]
@@ -208,8 +208,6 @@ def _restart_kernels(served):
 
 
 def test_dark_theme_is_followed(served, browser, artifacts):
-    from .served import open_page, wait_for_plot
-
     context = browser.new_context(viewport={"width": 1280, "height": 900}, color_scheme="dark")
     context.set_default_timeout(60_000)
     page = open_page(context, served("page"))
@@ -228,12 +226,7 @@ def test_nothing_overflows(opened, width):
     page = opened("page")
     page.set_viewport_size({"width": width, "height": 768})
     headline(page)
-    page.wait_for_function(  # the picture follows the page's width
-        """() => {
-          const wide = (name) => document.querySelector(name).getBoundingClientRect().width;
-          return Math.abs(wide('.tau-plot-picture') - wide('.tau-plot')) < 2;
-        }"""
-    )
+    wait_for_plot(page)  # the picture follows the page's width
     assert page.evaluate("document.documentElement.scrollWidth") <= width
 
 
