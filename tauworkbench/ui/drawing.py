@@ -79,8 +79,10 @@ class Drawer:
 
     def _make(self, plot: PlotShown, style: Style) -> None:
         width, height = plot.width, plot.height
+        # a hundredth of a pixel more: matplotlib before 3.11 cuts 459.99999 to 459
+        inches = ((width + 0.01) / 100, (height + 0.01) / 100)
         self._figure = figure = Figure(
-            figsize=(width / 100, height / 100), dpi=100 * plot.ratio, facecolor=style.background
+            figsize=inches, dpi=100 * plot.ratio, facecolor=style.background
         )
         inner = height - _TOP - _BOTTOM - _GAP
         low = _RESIDUAL_SHARE * inner
