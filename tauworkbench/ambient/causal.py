@@ -9,9 +9,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.signal import lfilter
 
 from ..records import Effect, FloatArray
+from ..thermal.responses import step_response
 from ..thermal.transfer import TransferFunction
 from .chain import Chain
 from .moments import Samples
@@ -26,6 +26,7 @@ __all__ = ["Filtered", "Traits", "filtered", "half_step", "run"]
 _MEMORY, _SHORTEST = 36.0, 1000
 # Least noise, as a share of the log's range.
 _FLOOR = 1e-5
+_LONGEST_STEP = 100_000
 
 
 @dataclass(frozen=True, eq=False)
@@ -170,16 +171,14 @@ def _vague(model: StateSpace, samples: Samples) -> FloatArray:
 
 def half_step(steady: Steady, chain: Chain, interval_s: float) -> float:
     """Time after a step of the ambient at which the filter has recovered half of it [s]."""
-    count = int(np.ceil((40 * chain.lag_s + 400 * interval_s) / interval_s)) + 1
-    ambient = np.ones(count)
-    ambient[0] = 0.0
-    reading = ambient
-    for tau in chain.poles_s:
-        decay = np.exp(-interval_s / tau)
-        reading = lfilter([0.0, 1 - decay], [1.0, -decay], reading)
-    state = np.zeros(steady.gain.size)
+    count = min(int(40 * sum(chain.poles_s) / interval_s) + 400, _LONGEST_STEP)
+    sensor = TransferFunction(chain.poles_s, chain.zero_s)
+    reading = step_response(sensor, interval_s * np.arange(1.0, count + 1.0))
+    state, before = np.zeros(steady.gain.size), 0.0
     for k in range(count):
         state = steady.keep @ (steady.move @ state) + steady.gain * reading[k]
         if state[0] >= 0.5:
-            return float((k - 1) * interval_s + chain.delay_s)
-    return float(count * interval_s)
+            into = (0.5 - before) / (state[0] - before)
+            return float((k + into) * interval_s + chain.delay_s)
+        before = float(state[0])
+    return float(count * interval_s + chain.delay_s)

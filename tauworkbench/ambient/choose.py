@@ -71,17 +71,16 @@ def name_of(order: int, jumps: bool) -> str:
     return f"order {order} with jumps" if jumps else f"order {order}"
 
 
-def pilot(samples: Samples) -> Samples:
-    """Return all samples, or a few long stretches of them."""
-    n = samples.time_s.size
+def pilot(n: int) -> NDArray[np.bool_] | slice:
+    """Which of n samples to look at: all, or a few long stretches."""
     if n <= 2 * PILOT_SAMPLES:
-        return samples
+        return slice(None)
     length = PILOT_SAMPLES // _STRETCHES
     starts = np.linspace(0, n - length, _STRETCHES).astype(int)
     keep = np.zeros(n, bool)
     for start in starts:
         keep[start : start + length] = True
-    return samples.part(keep)
+    return keep
 
 
 def choose(
@@ -92,7 +91,7 @@ def choose(
     A causal filter can't wait to see whether the ambient jumped: no jumps, and no order above 2,
     whose filter rings.
     """
-    part = pilot(samples)
+    part = samples.part(pilot(samples.time_s.size))
     end = float(part.time_s[-1])
     fits: dict[tuple[int, bool], tuple[Smooth, Cuts]] = {}
     for order in ORDERS[:2] if causal else ORDERS:

@@ -91,11 +91,14 @@ def _value(transfer: TransferFunction, name: str) -> float:
 def off_by(refit: Refit, share: float) -> dict[str, float]:
     """Rms change of the ambient with all time constants off by a share, each way [K]."""
     p = refit.prepared
-    part = pilot(p.samples)
-    target = part.time_s[part.time_s >= p.target_s[0]]
+    keep = pilot(p.target_s.size)
+    part, target = p.samples.part(keep), p.target_s[keep]
     t = p.sensor.transfer
-    base = refit.mean(t, part, target)
-    out = {}
+    out: dict[str, float] = {}
+    try:
+        base = refit.mean(t, part, target)
+    except LinAlgError:
+        return out
     for word, factor in (("shorter", 1 - share), ("longer", 1 + share)):
         moved = TransferFunction(
             tuple(factor * x for x in t.time_constants_s), t.zero_s, t.dead_time_s

@@ -9,9 +9,10 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike
+from scipy.linalg import LinAlgError
 from scipy.special import chdtrc, stdtrit
 
-from ..errors import InputError
+from ..errors import EstimateError, InputError
 from ..progress import SILENT, Watch, step
 from ..records import FloatArray, Trace
 from .causal import Traits, filtered
@@ -77,6 +78,8 @@ def recover_ambient(  # noqa: PLR0913 - each is a key of [recover] or [model]
     ------
     InputError
         Where the sensor isn't given once, or fewer than 8 samples can be used.
+    EstimateError
+        Where the log can't carry the sensor.
 
     Notes
     -----
@@ -89,6 +92,21 @@ def recover_ambient(  # noqa: PLR0913 - each is a key of [recover] or [model]
         raise InputError("coverage", f"{coverage} is not between 0 and 1", "give 0.95, say")
     known = known_sensor(trace.time_s, sensor, time_constants_s, zero_s, dead_time_s)
     prepared = prepare(trace, known)
+    try:
+        return _recovered(trace, prepared, causal, coverage, watch)
+    except LinAlgError:
+        raise EstimateError(
+            "trace",
+            f"{prepared.samples.count} samples over {prepared.end_s - prepared.target_s[0]:.4g} s "
+            f"can't carry a sensor whose lag is {prepared.chain.lag_s:.4g} s",
+            "give a longer or denser log, or fewer time constants",
+        ) from None
+
+
+def _recovered(
+    trace: Trace, prepared: Prepared, causal: bool, coverage: float, watch: Watch
+) -> Ambient:
+    """Recover a prepared log."""
     choice = choose(prepared.samples, prepared.chain, watch, causal=causal)
     found, cuts = _fit(prepared, choice, watch)
     refit = Refit(prepared, found, cuts)

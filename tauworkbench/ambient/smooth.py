@@ -166,7 +166,13 @@ def smooth(  # noqa: PLR0913 - samples, chain and law, then how to search
         interval = scale.interval(omega)
         limits = scale.limits(interval)
         begin = min(max(omega, limits[0]), limits[1])
-        found = search(build(interval), scale, begin, limits, _NEAR if near else _FAR)
+        try:
+            found = search(build(interval), scale, begin, limits, _NEAR if near else _FAR)
+        except LinAlgError:  # more knots than the samples bear
+            if attempt == _TRIES - 1:
+                raise
+            omega /= 2
+            continue
         omega = found.omega
         share = scale.interval(omega) / interval
         if _GOOD[0] <= share <= _GOOD[1] or attempt == _TRIES - 1:

@@ -9,10 +9,11 @@ blocks of one matrix exponential). Of the reader's averaging only the middle's d
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.linalg import expm, solve_discrete_are, solve_discrete_lyapunov
+from scipy.linalg import expm, solve_discrete_are
 
 from ..records import FloatArray
 from .chain import Chain
@@ -21,6 +22,7 @@ __all__ = ["StateSpace", "Steady"]
 
 # Intervals within this factor of the middle one share one interpolation of this degree.
 _NEAR, _DEGREE = 2.0, 20
+_DOUBLINGS = 40
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,9 +55,15 @@ class StateSpace:
         n = self.drift.shape[0]
         both = np.zeros((2 * n, 2 * n))
         both[:n, :n], both[:n, n:], both[n:, n:] = -self.drift, self.noise, self.drift.T
-        block = expm(both * interval_s)
+        # The blocks grow as exp(interval / tau): short first, then doubled.
+        fastest = float(np.abs(np.diag(self.drift)).max())
+        doublings = max(math.ceil(math.log2(max(interval_s * fastest, 1.0))), 0)
+        block = expm(both * (interval_s / 2**doublings))
         move = block[n:, n:].T
         spread = move @ block[:n, n:]
+        for _ in range(doublings):
+            spread = spread + move @ spread @ move.T
+            move = move @ move
         return move, (spread + spread.T) / 2
 
     def over_all(self, interval_s: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -115,8 +123,10 @@ class Steady:
     @property
     def noise_gain(self) -> float:
         """Standard deviation of the ambient's noise over that of a sample, from noise alone."""
-        drive = np.outer(self.gain, self.gain)
-        return float(np.sqrt(solve_discrete_lyapunov(self.keep @ self.move, drive)[0, 0]))
+        total, loop = np.outer(self.gain, self.gain), self.keep @ self.move
+        for _ in range(_DOUBLINGS):  # the sum of loop^k g g' loop'^k, twice as many terms each time
+            total, loop = total + loop @ total @ loop.T, loop @ loop
+        return float(np.sqrt(total[0, 0]))
 
     def half_frequency(self, chain: Chain, interval_s: float) -> float:
         """Angular frequency at which sensor and filter together fall to a half [rad/s]."""
