@@ -45,6 +45,7 @@ class Part:
     quantities: dict[str, Quantity]
     quantile: float
     runner_up_s: float | None
+    unseen_s: float | None = None
 
 
 def budget_of(part: Part, settings: FitSettings) -> Budget | None:
@@ -103,7 +104,8 @@ def _onset(part: Part, settings: FitSettings) -> list[BudgetLine]:
         taus = part.fitted.transfer.time_constants_s
         limit = part.quantities.get("time_constant_2_s")
         fast = taus[1] if len(taus) > 1 and limit else 0.0
-        hidden = hidden_lag_s(taus[0], fast) if fast else 0.0
+        # one pole: a second one as large as the record allows would lie wholly before the onset
+        hidden = hidden_lag_s(taus[0], fast) if fast else part.unseen_s or 0.0
         # the truth lies between nothing hidden and all of it: with a factor of two, all of it
         return [BudgetLine("found onset (hidden fast response)", hidden / 2, False, "high")]
     if part.fitted.form.onset == "given" and settings.onset_u_s:

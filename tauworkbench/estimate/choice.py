@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -38,6 +38,8 @@ class Choice:
     inflation: float
     candidates: tuple[Candidate, ...]
     runner_up_s: float | None
+    unseen_s: float | None = None
+    """Upper limit of a second time constant where one was found [s]."""
 
 
 def choose(record: Record, fits: list[Fitted], settings: FitSettings) -> Choice:
@@ -65,7 +67,18 @@ def choose(record: Record, fits: list[Fitted], settings: FitSettings) -> Choice:
     _check_slowest(quantities["time_constant_1_s"], record)
     table = tuple(_candidate(f, f is best, worth, refused.get(f.form.name, "")) for f in fits)
     runner_up = _runner_up(table)
-    return Choice(best, scale, quantities, noise, inflation, table, runner_up)
+    unseen = _unseen(best, fits, inflation, settings.coverage)
+    return Choice(best, scale, quantities, noise, inflation, table, runner_up, unseen)
+
+
+def _unseen(best: Fitted, fits: list[Fitted], inflation: float, coverage: float) -> float | None:
+    """Largest second time constant that the record can't exclude behind a found onset [s]."""
+    if best.form.poles != 1 or best.form.onset != "found":
+        return None
+    richer = [f for f in fits if f.form == replace(best.form, poles=2)]
+    if not richer:
+        return None
+    return intervals(richer[0], _scale(richer[0], inflation, coverage))["time_constant_2_s"].high
 
 
 def _runner_up(table: tuple[Candidate, ...]) -> float | None:

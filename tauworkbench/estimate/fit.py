@@ -116,6 +116,12 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
     choice = choose(record, fits, settings)
     fitted, found = choice.fitted, choice.quantities
     cautions = more + reservations(record, fitted, found, choice.noise, settings, trace.reader)
+    if choice.unseen_s:
+        words = (
+            f"behind the found onset a second time constant of up to {choice.unseen_s:.2g} s can't "
+            "be excluded; the budget allows for it on the high side"
+        )
+        cautions += (words,)
     summary = _step_summary(step, settings, choice)
     direct = None
     if summary.onset_s is not None and not settings.transfer_s:
@@ -138,7 +144,16 @@ def _fit_one(trace: Trace, step: Step, settings: FitSettings, watch: Watch) -> E
         band=band,
         lmfit_result=final_least_squares(fitted),
         budget=budget_of(
-            Part(trace, record, fitted, found, choice.scale.quantile, choice.runner_up_s), settings
+            Part(
+                trace,
+                record,
+                fitted,
+                found,
+                choice.scale.quantile,
+                choice.runner_up_s,
+                choice.unseen_s,
+            ),
+            settings,
         ),
     )
 
