@@ -76,3 +76,15 @@ def test_trace_is_the_elements_temperature_within_its_own_uncertainty(tmp_path):
     pull = (trace.temperature_c - log.element_c) / trace.sigma_k
     assert np.std(pull) == pytest.approx(1.0, abs=0.15)
     assert abs(np.mean(pull)) < 0.1
+
+
+def test_field_sample_gives_its_ambient_back():
+    import tauworkbench as tw
+
+    folder = shipped.sample_data()
+    ambient = tw.recover(folder / "door_opened.toml").ambient
+    truth = np.loadtxt(folder / "door_opened_truth.csv", delimiter=",", skiprows=1)
+    true_c = np.interp(ambient.time_s, truth[:, 0], truth[:, 1])
+    indicated_off = np.std(ambient.indicated_c - true_c)
+    assert np.std(ambient.ambient_c - true_c) < indicated_off / 10
+    assert np.mean((ambient.low_c <= true_c) & (true_c <= ambient.high_c)) > 0.9
