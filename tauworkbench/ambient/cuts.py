@@ -96,15 +96,28 @@ def _inside(breaks: FloatArray, cuts: Cuts, half: float) -> tuple[FloatArray, Fl
     return low[inside], high[inside]
 
 
-def supported(samples: Samples, cuts: Cuts, longest_s: float) -> Cuts:
-    """Leave out cuts at the log's ends, in gaps too long, and without a sample between them."""
+def supported(samples: Samples, cuts: Cuts, longest_s: float, apart_s: float) -> Cuts:
+    """Leave out cuts that the samples can't hold.
+
+    Those at the log's ends, in gaps longer than ``longest_s``, and those that follow another by
+    less than ``apart_s`` or with fewer than two samples between: the level there would be free.
+    """
     time = samples.time_s
     at = np.searchsorted(time, cuts.time_s)
     inside = (at >= 2) & (at <= time.size - 2)
     at = np.clip(at, 1, time.size - 1)
     inside &= time[at] - time[at - 1] < longest_s
-    inside &= np.append(True, np.diff(at) > 0)
-    return cuts.part(inside)
+    kept = cuts.part(inside)
+    while kept.count > 1:
+        low, high = kept.time_s - kept.width_s / 2, kept.time_s + kept.width_s / 2
+        between = np.searchsorted(time, low[1:]) - np.searchsorted(time, high[:-1], side="right")
+        close = (low[1:] - high[:-1] < apart_s) | (between < 2)
+        if not close.any():
+            break
+        # The first of each row of close ones stays; what follows the next is looked at anew.
+        first = close & ~np.append(False, close[:-1])
+        kept = kept.part(~np.append(False, first))
+    return kept
 
 
 def builder(
@@ -132,7 +145,7 @@ def builder(
         longest = max(int(_GAP_CONDITION ** (0.5 / unknowns)), 8)
         grid = spread(shifted.time_s, interval, end_s, longest, 4 * unknowns)
         layout = cut_breaks(
-            grid, supported(shifted, cuts, longest * interval), degree, poles, order
+            grid, supported(shifted, cuts, longest * interval, interval), degree, poles, order
         )
         return assemble(shifted, layout, seen, order)
 

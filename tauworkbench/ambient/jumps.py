@@ -78,7 +78,7 @@ def find_jumps(
         else:
             cuts = _kept(suppose(samples, chain, found, cuts), found)
         settled = not new.size
-        cuts = supported(samples, cuts, math.inf)
+        cuts = supported(samples, cuts, math.inf, 2 * longest)
         try:
             again = smooth(
                 samples,
