@@ -118,8 +118,10 @@ def wait_for_plot(page: Any) -> None:
     """Wait until the picture is drawn, as wide as its place."""
     page.wait_for_selector(".tau-plot[data-frame]", timeout=90_000)
     page.wait_for_function(
-        "document.querySelector('.tau-plot-picture').offsetWidth"
-        " === document.querySelector('.tau-plot').offsetWidth"
+        """() => {
+          const wide = (name) => document.querySelector(name).getBoundingClientRect().width;
+          return Math.abs(wide('.tau-plot-picture') - wide('.tau-plot')) < 2;
+        }"""
     )
 
 

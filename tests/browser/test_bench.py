@@ -64,7 +64,7 @@ def test_from_the_samples_to_a_saved_result(door, opened, served, artifacts):
     page.wait_for_function("document.querySelector('.tau-field-onset input').value !== ''")
     typed = float(field(page, "onset").input_value())
     assert typed > float(before)
-    assert float(page.locator(".tau-marker-onset").get_attribute("aria-valuenow")) == typed
+    page.locator(f".tau-marker-onset[aria-valuenow='{typed}']").wait_for()
     page.locator(".tau-code pre", has_text=f"onset_s = {typed}").wait_for()
     second = fresh_headline(page, first)
     assert second < first  # counted from later
