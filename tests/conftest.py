@@ -29,6 +29,26 @@ def _chromium() -> str | None:
     return next((found for name in _CHROMIUM_NAMES if (found := shutil.which(name))), None)
 
 
+@pytest.hookimpl(trylast=True)
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Put browser tests last, those that share one browser for the whole session at the very end.
+
+    An open synchronous Playwright keeps an event loop running in its process, and whatever starts
+    one of its own after that fails. A page and a kernel are also at the mercy of a busy machine:
+    such a test may be tried three times.
+    """
+
+    def rank(item: pytest.Item) -> int:
+        if item.get_closest_marker("browser") is None:
+            return 0
+        return 2 if "browser" in item.path.parent.parts[-1:] else 1
+
+    items.sort(key=rank)
+    for item in items:
+        if rank(item) > 0:
+            item.add_marker(pytest.mark.flaky(reruns=2))
+
+
 def pytest_runtest_setup(item: pytest.Item) -> None:
     """Skip a browser test where it can't run, unless TAU_REQUIRE_BROWSER forbids that."""
     if item.get_closest_marker("browser") is None:
