@@ -183,6 +183,8 @@ def test_reload_offers_the_work(opened):
     page.wait_for_function("document.querySelector('.tau-field-onset input').value === '11.5'")
 
 
+# A restart that the front end must notice: on a busy machine it takes longer than a minute.
+@pytest.mark.slow
 def test_killed_kernel_loses_nothing(opened, served):
     page = opened("lab")
     headline(page)
