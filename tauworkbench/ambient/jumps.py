@@ -15,6 +15,7 @@ noise are found anew; once the largest jumps are out of the way the smaller ones
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 from scipy.linalg import LinAlgError
@@ -34,7 +35,8 @@ from .system import penalised_table, penalty_band, unit_moments
 __all__ = ["find_jumps"]
 
 # Beyond what chance gives: to look for jumps at all, to try one, to keep it.
-_BEGIN, _TRY, _KEEP = 6.0, 0.0, 2.0
+_BEGIN, _TRY, _KEEP = 6.0, 2.0, 6.0
+_QUIETER = 30.0
 
 
 def find_jumps(
@@ -146,7 +148,7 @@ def surprise(found: Smooth) -> FloatArray:
             twice = 1.0 if i == j else 2.0
             spread += twice * f[i] * f[j] * posterior.inverse[j - i, knots.alive(i)]
     expected = np.maximum(prior - spread, 1e-6 * prior) * found.solution.variance
-    statistic = slope**2 / expected
+    statistic = slope**2 / np.maximum(expected, 1e-300)
     odd = np.convolve(knots.kind > 0, np.ones(2 * size + 1), "same") > 0
     statistic[odd[: knots.cells]] = 0.0
     statistic[:size] = statistic[-size:] = 0.0
@@ -166,6 +168,10 @@ def _prior(knots: Knots, chain: Chain, order: int, f: FloatArray) -> float:
 def _with(samples: Samples, chain: Chain, found: Smooth, cuts: Cuts, new: FloatArray) -> Cuts:
     """Add new jumps, each moved to its likeliest place and width; the old ones stay."""
     fresh = Cuts(new, np.zeros(new.size), np.zeros(new.size))
+    # Once the jump is out of the way the rest is quieter than it seemed with it: as rough as
+    # before, the walk would make up for a jump in the wrong place.
+    quiet = replace(found.solution, smoothness=_QUIETER * found.solution.smoothness)
+    found = replace(found, solution=quiet)
     fits = local_fits(samples, chain, found, fresh, np.zeros(0), cuts.time_s)
     fresh = Cuts(new + coarse(fits), fresh.width_s, fresh.spread_s)
     fresh = suppose(samples, chain, found, fresh, tries=2, others=cuts.time_s).cuts()

@@ -151,10 +151,8 @@ def _fit(p: Prepared, choice: Choice, watch: Watch) -> tuple[Smooth, Cuts]:
 def _smoothed(p: Prepared, found: Smooth, cuts: Cuts) -> tuple[FloatArray, dict[str, FloatArray]]:
     """Ambient [K above the origin] with the parts that noise and smoothness give."""
     posterior = Posterior(found.solution)
-    table = posterior.ambient_table
-    mean, variance = posterior.both(table, p.target_s)
+    mean, variance = posterior.ambient(p.target_s)
     least = 0.1 * variance
-    variance += posterior.lost_variance()
     if found.spread > _KNOWN:
         variance += smoothness_part(found, p.target_s) ** 2
     parts: dict[str, FloatArray] = {}

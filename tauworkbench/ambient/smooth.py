@@ -5,7 +5,7 @@ The smoothness is searched as the frequency at which the recovery falls to a hal
 .. math:: \lambda\, \omega^{2m} = |H(i \omega)|^2 n_t,
 
 with :math:`n_t` the samples per second (Wiener's filter for white noise): a number with a meaning,
-in which the knots can be laid. They stand ten to its wavelength, and are laid anew until the
+in which the knots can be laid. They stand seven to its wavelength, and are laid anew until the
 frequency found agrees with the one that they were made for.
 """
 
@@ -25,7 +25,7 @@ from .system import Solution, System
 
 __all__ = ["Scale", "Smooth", "search", "smooth"]
 
-_KNOTS_PER_WAVELENGTH = 10.0
+_KNOTS_PER_WAVELENGTH = 7.0
 # Frequencies tried on one set of knots: up to twice what they were made for, beyond which they are
 # too coarse; down to where the equations' condition, (knots' highest frequency / that)^(2 order +
 # 2 poles), gets near the inverse of the rounding error.
@@ -186,11 +186,14 @@ def search(
     """Minimise the criterion over the log of the frequency between limits, by parabolas."""
     low, high = math.log(limits[0]), math.log(limits[1])
     known: dict[float, float] = {}
+    last: dict[float, Solution] = {}  # one at most: a factor is as large as the equations
 
     def value(x: float) -> float:
         if x not in known:
+            last.clear()
             try:
-                known[x] = system.solve(scale.smoothness(math.exp(x))).criterion
+                last[x] = system.solve(scale.smoothness(math.exp(x)))
+                known[x] = last[x].criterion
             except LinAlgError:
                 known[x] = math.inf
         return known[x]
@@ -212,7 +215,7 @@ def search(
             x = _vertex(known, x, low, high)
             value(x)
             x = min(known, key=known.__getitem__)
-    return _done(system, scale, x, known)
+    return _done(system, scale, x, known, last)
 
 
 def _vertex(known: dict[float, float], x: float, low: float, high: float) -> float:
@@ -229,9 +232,16 @@ def _vertex(known: dict[float, float], x: float, low: float, high: float) -> flo
     return min(max(x - slope * (c - a) / 2 / bend, low), high)
 
 
-def _done(system: System, scale: Scale, x: float, known: dict[float, float]) -> Smooth:
+def _done(
+    system: System,
+    scale: Scale,
+    x: float,
+    known: dict[float, float],
+    last: dict[float, Solution],
+) -> Smooth:
+    """The best one tried, with how sharply it stands out."""
     smoothness = scale.smoothness(math.exp(x))
-    solution = system.solve(smoothness)
+    solution = last[x] if x in last else system.solve(smoothness)
     # Curvature over log lambda, from the tried points nearest to the lowest.
     near = sorted(known, key=lambda k: abs(k - x))[:4]
     near = [k for k in near if math.isfinite(known[k])]

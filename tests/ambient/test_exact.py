@@ -13,8 +13,12 @@ from tauworkbench.ambient.chain import Chain
 from tauworkbench.ambient.knots import Knots, Layout
 from tauworkbench.ambient.moments import Samples
 from tauworkbench.ambient.posterior import Posterior
+from tauworkbench.ambient.recover import recover_ambient
 from tauworkbench.ambient.statespace import StateSpace
 from tauworkbench.ambient.system import assemble
+from tauworkbench.records import Trace
+
+from .scenes import scene
 
 STEP, VARIANCE = 0.5, 4e-4
 CASES = [((10.0,), 1, 0.01), ((10.0, 2.0), 1, 0.01), ((10.0,), 2, 0.02)]
@@ -46,7 +50,12 @@ def matrices(
 
 
 def by_library(
-    library: ModuleType, reading: np.ndarray, taus: tuple[float, ...], order: int, intensity: float
+    library: ModuleType,
+    reading: np.ndarray,
+    taus: tuple[float, ...],
+    order: int,
+    intensity: float,
+    variance: float = VARIANCE,
 ) -> object:
     move, spread = matrices(taus, order, intensity)
     n = len(move)
@@ -54,7 +63,7 @@ def by_library(
     model.bind(np.asfortranarray(reading[None, :]))
     model["design"] = np.eye(n)[-1:]
     model["transition"], model["selection"] = move, np.eye(n)
-    model["state_cov"], model["obs_cov"] = (spread + spread.T) / 2, np.array([[VARIANCE]])
+    model["state_cov"], model["obs_cov"] = (spread + spread.T) / 2, np.array([[variance]])
     model.initialize_diffuse()
     return model.smooth()
 
@@ -88,6 +97,24 @@ def test_smoother_is_the_librarys_to_a_millionth_of_the_band(
     away = np.abs(mean + reading.mean() - wanted.smoothed_state[0])  # type: ignore[attr-defined]
     assert np.max(away / theirs) < 1e-6
     assert np.max(np.abs(ours / theirs - 1)) < 1e-6
+
+
+@pytest.mark.parametrize("taus", [(10.0,), (10.0, 2.0)])
+def test_everyday_knots_give_nearly_the_exact_answer(
+    smoother: ModuleType, taus: tuple[float, ...]
+) -> None:
+    log = scene("random walk", 3, taus, jitter=0.0, gaps=0)
+    ours = recover_ambient(Trace(log.time_s, log.reading_c), time_constants_s=taus)
+    assert ours.settings.order == 1
+    noise, intensity = ours.settings.noise_k**2, ours.settings.intensity
+    exact = by_library(smoother, log.reading_c, taus, 1, intensity, noise)
+    spread = np.sqrt(exact.smoothed_state_cov[0, 0])  # type: ignore[attr-defined]
+    away = (ours.ambient_c - exact.smoothed_state[0]) / spread  # type: ignore[attr-defined]
+    middle = slice(20, -20)
+    ratio = (ours.parts_k["noise and smoothness"] / spread)[middle]
+    assert np.sqrt(np.mean(away[middle] ** 2)) < 0.08
+    assert np.median(ratio) == pytest.approx(1, abs=0.03)
+    assert 0.9 < ratio.min() < ratio.max() < 1.1
 
 
 @pytest.mark.parametrize(("taus", "order", "intensity"), CASES)
